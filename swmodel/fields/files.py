@@ -187,7 +187,7 @@ def _opened(path: Path, key: Key) -> Iterator[Mapping[str, _Variable]]:
             raise RequestError(Fault(key, f"{path} is of no known kind", allowed))
         with kind(path) as variables:
             yield variables
-    except (OSError, ValueError, TypeError, EOFError) as error:
+    except (OSError, ValueError, TypeError, EOFError, LookupError) as error:
         reason = str(error).splitlines()[0] if str(error) else type(error).__name__
         raise RequestError(Fault(key, f"{path} cannot be read: {reason}")) from error
 

@@ -183,6 +183,8 @@ def _refuse(node: ast.AST, text: str) -> None:
         remedy = "write powers with **"
     elif isinstance(node, ast.BinOp) and isinstance(node.op, ast.BitAnd | ast.BitOr):
         remedy = "write and, or"
+    elif isinstance(node, ast.Call) and not node.keywords:
+        remedy = "write products with *"
     elif isinstance(node, ast.IfExp):
         remedy = "write where(condition, then, otherwise)"
     raise RequestError(Fault((), found, GRAMMAR, remedy))
