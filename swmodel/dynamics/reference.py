@@ -13,6 +13,7 @@ round lies in the rim and is never used.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import Any
 
 import numpy as np
@@ -117,7 +118,7 @@ def tendency(
     dy: float,
     edges: tuple[str, str, str, str],
     slip: str = "free",
-    pv_flux: str = "both",
+    pv_flux: str | Callable[..., tuple[Array, Array]] = "both",
     linear: bool = False,
 ) -> tuple[Array, Array, Array]:
     """Rates of change of u, v and eta (equations 1 to 3).
@@ -140,8 +141,8 @@ def tendency(
         West, east, south, north: ``"periodic"`` or ``"wall"``.
     slip : str
         ``"free"`` or ``"none"``.
-    pv_flux : str
-        ``"energy"``, ``"enstrophy"`` or ``"both"``.
+    pv_flux : str or callable
+        ``"energy"``, ``"enstrophy"``, ``"both"``, or a function ``(q, U, V, aspect)``.
     linear : bool
         Drop zeta and K, and take H for h in the fluxes.
 
@@ -168,7 +169,7 @@ def tendency(
     K = 0 * eta_ if linear else (u_**2 + east(u_) ** 2 + v_**2 + north(v_) ** 2) / 4
     B = K + gravity * eta_
 
-    flux_u, flux_v = FLUXES[pv_flux](q, U, V, dy / dx)
+    flux_u, flux_v = (FLUXES[pv_flux] if isinstance(pv_flux, str) else pv_flux)(q, U, V, dy / dx)
     du = flux_u - (B - west(B)) / dx
     dv = flux_v - (B - south(B)) / dy
     deta = -(east(U) - U) / dx - (north(V) - V) / dy
