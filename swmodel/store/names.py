@@ -71,7 +71,7 @@ STILL_FIELDS: dict[str, FieldName] = {
 }
 
 SERIES: dict[str, SeriesName] = {
-    "mass": SeriesName("m3", "volume of the fluid above its rest level and below"),
+    "mass": SeriesName("m3", "volume of the fluid"),
     "energy_kinetic": SeriesName("m5 s-2", "kinetic energy per unit density"),
     "energy_potential": SeriesName("m5 s-2", "potential energy per unit density, counted from the rest surface"),
     "potential_enstrophy": SeriesName("m s-2", "potential enstrophy"),
