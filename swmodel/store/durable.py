@@ -20,9 +20,6 @@ from ..errors import MachineError
 
 BESIDE = ".partial"
 
-# what netCDF-4 needs to read a file and to append to it: links and attributes in order, and no newer format
-HDF5_FORMAT: dict[str, Any] = {"track_order": True, "libver": ("earliest", "v110")}
-
 
 class _RawFile(io.RawIOBase):
     """The file under HDF5, which keeps the first error until HDF5 has closed.
@@ -106,7 +103,7 @@ def machine_errors(path: Path) -> Iterator[None]:
 
 
 @contextmanager
-def _beside(path: Path) -> Iterator[_RawFile]:
+def _beside(path: Path, *, sync_name: bool = True) -> Iterator[_RawFile]:
     """Open a file beside `path`; at the end it is on the disk and has the name `path`, or nothing is left of it."""
     partial = path.with_name(f"{path.name}.{os.getpid()}{BESIDE}")
     with machine_errors(path):
@@ -126,20 +123,42 @@ def _beside(path: Path) -> Iterator[_RawFile]:
             with suppress(FileNotFoundError):
                 os.unlink(partial)  # noqa: PTH108
             raise
-        sync_folder(path.parent)
+        if sync_name:
+            sync_folder(path.parent)
 
 
 @contextmanager
-def hdf5_beside(path: Path) -> Iterator[h5py.File]:
+def hdf5_beside(path: Path, template: bytes = b"", *, sync_name: bool = True) -> Iterator[h5py.File]:
     """Write an HDF5 file that appears under its name whole, and on the disk, or not at all.
+
+    Parameters
+    ----------
+    path : Path
+        Its name.
+    template : bytes
+        What is in the file to begin with; nothing by default.
+    sync_name : bool
+        Whether the name, too, must be on the disk on return. A part's need not: the disk takes names in their order,
+        and the index that names the part comes after it.
 
     Raises
     ------
     MachineError
         Where the disk is full, writing is not permitted, and so on; nothing is left of the file then.
     """
-    with _beside(path) as raw, h5py.File(raw, "w", **HDF5_FORMAT) as file:
-        yield file
+    with _beside(path, sync_name=sync_name) as raw:
+        raw.write(template)
+        with open_hdf5(raw, new=not template) as file:
+            yield file
+
+
+def open_hdf5(raw: Any, *, new: bool) -> h5py.File:
+    """Open an HDF5 file to write, in the form that netCDF-4 needs to read it and to append to it.
+
+    Links and attributes keep their order, and no newer format is used than Debian's ncdump reads.
+    """
+    form = ("earliest", "v110")
+    return h5py.File(raw, "w", libver=form, track_order=True) if new else h5py.File(raw, "r+", libver=form)
 
 
 def write_text(path: Path, text: str) -> None:

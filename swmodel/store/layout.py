@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import datetime
+import io
 import json
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import h5py
@@ -15,6 +17,7 @@ from numpy.typing import NDArray
 from ..errors import CAUTION
 from ..grid import Basin
 from ..grid.staggered import Location
+from .durable import open_hdf5
 from .names import DIMENSIONS, FIELDS, SGRID_LOCATIONS, STILL_FIELDS, FieldName
 from .output import ResolvedOutput, Window
 from .provenance import Provenance, without_host
@@ -26,7 +29,7 @@ except ImportError:  # a machine without it: the same format, some eight times s
 
 DEFLATE_LEVEL = 1  # 2 to 4 gain 3 % on eddying flow and cost half the speed
 CHUNK_BYTES = 4 << 20  # rows of a plane are stored in bands of at most this: a section reads little
-TIME_CHUNK = 1024
+TIME_CHUNK = 128
 
 Array = NDArray[Any]
 
@@ -79,11 +82,39 @@ class Layout:
         ny, nx = self.shape(location)
         return min(ny, max(1, CHUNK_BYTES // (nx * itemsize)))
 
-    def add_head(self, file: h5py.File) -> None:
-        """Write global attributes, horizontal coordinates, the topology and the configuration."""
+    @cached_property
+    def plain_template(self) -> bytes:
+        """A file with room for snapshots, but none yet: making it anew for each would cost more than the fields."""
+        image = io.BytesIO()
+        with open_hdf5(image, new=True) as file:
+            self._add_head(file)
+            for name in self.fields:
+                row = FIELDS[name]
+                self._create(file, name, (0, *self.shape(row.location)), self.dtype, row)
+        return image.getvalue()
+
+    def index_template(self, still: str) -> bytes:
+        """Return an index that names no part yet.
+
+        Parameters
+        ----------
+        still : str
+            File with depth and f, as a path from the folder of the index.
+        """
+        image = io.BytesIO()
+        with open_hdf5(image, new=True) as file:
+            self._add_head(file)
+            for name, row in STILL_FIELDS.items():
+                shape = self.shape(row.location)
+                self.link_field(file, name, shape, [(slice(0, shape[0]), still)])
+        return image.getvalue()
+
+    def _add_head(self, file: h5py.File) -> None:
+        """Write global attributes, configuration, coordinates and topology; there are no times yet."""
         add_provenance(file, self.provenance)
         for name in ("x", "y", "x_face", "y_face"):
             self._add_axis(file, name)
+        add_time(file, self.epoch)
         topology = file.create_dataset("grid", data=np.int32(0), track_order=True)
         attach(
             topology,
@@ -116,19 +147,20 @@ class Layout:
             dataset = self._create(file, name, self.shape(row.location), np.dtype("<f8"), row)
             self._write_plane(dataset, (), np.asarray(values[name]), row.location)
 
-    def add_fields(self, file: h5py.File, times: Sequence[float]) -> None:
-        """Write the times and make room for the fields of as many snapshots."""
-        add_time(file, times, self.epoch)
+    def make_room(self, file: h5py.File, times: Sequence[float]) -> None:
+        """Write the times, and make room for the fields of as many snapshots, in a file begun from the template."""
+        set_times(file, times)
         for name in self.fields:
-            row = FIELDS[name]
-            self._create(file, name, (len(times), *self.shape(row.location)), self.dtype, row)
+            file[name].resize(len(times), axis=0)
 
     def write_snapshot(self, file: h5py.File, k: int, values: Mapping[str, Array]) -> None:
         """Write the fields of snapshot `k` of a file, ``[y, x]`` each, as they are stored."""
         for name in self.fields:
             self._write_plane(file[name], (k,), values[name], FIELDS[name].location)
 
-    def link_field(self, file: h5py.File, name: str, shape: tuple[int, ...], sources: Mapping[slice, str]) -> None:
+    def link_field(
+        self, file: h5py.File, name: str, shape: tuple[int, ...], sources: Sequence[tuple[slice, str]]
+    ) -> None:
         """Make a field whose values lie in other files.
 
         Parameters
@@ -139,14 +171,14 @@ class Layout:
             Name of the field, here and there.
         shape : tuple of int
             Its shape.
-        sources : mapping of slice to str
+        sources : sequence of (slice, str)
             What part of the first direction lies in which file, as a path from the folder of `file`.
         """
         row = FIELDS.get(name) or STILL_FIELDS[name]
         dtype = self.dtype if name in FIELDS else np.dtype("<f8")
         room = (None, *shape[1:]) if name in FIELDS else shape
         layout = h5py.VirtualLayout(shape, dtype, maxshape=room)
-        for part, source in sources.items():
+        for part, source in sources:
             count = len(range(*part.indices(shape[0])))
             layout[part] = h5py.VirtualSource(source, name, shape=(count, *shape[1:]), dtype=dtype)
         dataset = file.create_virtual_dataset(name, layout, fillvalue=np.nan)
@@ -248,21 +280,17 @@ def _without_host(settings: Any) -> Any:
     return without_host([settings]) if isinstance(settings, str) else settings
 
 
-def add_time(file: h5py.File, times: Sequence[float], epoch: datetime.datetime) -> h5py.Dataset:
-    """Write the time axis, which may grow.
+def add_time(file: h5py.File, epoch: datetime.datetime) -> h5py.Dataset:
+    """Make the time axis, which may grow and is empty.
 
     Parameters
     ----------
     file : h5py.File
         Where.
-    times : sequence of float
-        Model times, s.
     epoch : datetime
         Date of model time 0; UTC unless it says otherwise.
     """
-    values = np.asarray(times, "<f8")
-    chunk = min(max(1, values.size), TIME_CHUNK)
-    dataset = file.create_dataset("time", data=values, maxshape=(None,), chunks=(chunk,), track_order=True)
+    dataset = file.create_dataset("time", (0,), "<f8", maxshape=(None,), chunks=(TIME_CHUNK,), track_order=True)
     attach(
         dataset,
         standard_name="time",
@@ -274,6 +302,12 @@ def add_time(file: h5py.File, times: Sequence[float], epoch: datetime.datetime) 
     )
     dataset.make_scale("time")
     return dataset
+
+
+def set_times(file: h5py.File, times: Sequence[float]) -> None:
+    """Write model times, s, into the time axis."""
+    file["time"].resize(len(times), axis=0)
+    file["time"][...] = times
 
 
 def _utc(epoch: datetime.datetime) -> str:

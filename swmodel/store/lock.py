@@ -5,7 +5,6 @@ from __future__ import annotations
 import datetime
 import errno
 import json
-import logging
 import os
 from pathlib import Path
 
@@ -19,8 +18,6 @@ except ImportError:  # a system without locks of this kind: the process number i
 
 LOCK = ".lock"
 
-log = logging.getLogger(__name__)
-
 
 class FolderLock:
     """Held from its making to `release`, or to the end of the process, however that comes.
@@ -33,6 +30,11 @@ class FolderLock:
     folder : Path
         The run's folder.
 
+    Attributes
+    ----------
+    left_by : str
+        Who held it and ended without letting go; empty where nobody.
+
     Raises
     ------
     MachineError
@@ -43,12 +45,10 @@ class FolderLock:
         self.path = folder / LOCK
         with machine_errors(self.path):
             self._descriptor = self._acquire()
-            left_by = _holder(self.path)
+            self.left_by = _holder(self.path)
             os.ftruncate(self._descriptor, 0)
             since = datetime.datetime.now(datetime.UTC).strftime("%Y-%m-%d %H:%M:%S UTC")
             os.write(self._descriptor, json.dumps({"process": os.getpid(), "since": since}).encode())
-        if left_by:
-            log.warning("the folder was left locked by %s, which has ended; taken over", left_by)
 
     def _acquire(self) -> int:
         while True:

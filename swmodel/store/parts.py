@@ -12,6 +12,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable, Mapping, Sequence
+from contextlib import suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -21,7 +22,7 @@ from numpy.typing import NDArray
 
 from ..errors import MachineError, RequestError
 from .durable import hdf5_beside, make_folder, remove, second_name
-from .layout import Layout, add_time, chunks_of
+from .layout import Layout, chunks_of, set_times
 from .names import FIELDS, STILL_FIELDS
 
 SNAPSHOTS = "snapshots.h5"
@@ -82,10 +83,10 @@ class SnapshotParts:
         self.parts: list[Part] = []
         self.times: list[float] = []
         self._joined_before: list[Part] = []
+        self._index_template = layout.index_template(f"{PARTS}/{STILL}")
         make_folder(self.folder)
         if not (self.folder / STILL).exists():
-            with hdf5_beside(self.folder / STILL) as file:
-                layout.add_head(file)
+            with hdf5_beside(self.folder / STILL, layout.plain_template) as file:
                 layout.add_still_fields(file, still)
 
     def append(self, time: float, values: Mapping[str, NDArray[Any]]) -> None:
@@ -99,9 +100,8 @@ class SnapshotParts:
             The fields as they are stored.
         """
         part = Part(len(self.times), 1)
-        with hdf5_beside(self.folder / part.name) as file:
-            self.layout.add_head(file)
-            self.layout.add_fields(file, [time])
+        with hdf5_beside(self.folder / part.name, self.layout.plain_template, sync_name=False) as file:
+            self.layout.make_room(file, [time])
             self.layout.write_snapshot(file, 0, values)
         parts, joined = self._join([*self.parts, part], [*self.times, time])
         self._write_index(parts, [*self.times, time])
@@ -117,7 +117,8 @@ class SnapshotParts:
             self._copy(self.parts, self.times, self.index)
         self._remove(self._on_disk())
         remove(self.folder / STILL)
-        self.folder.rmdir()
+        with suppress(OSError):  # a file that is not ours keeps the folder
+            self.folder.rmdir()
 
     def restore(self, until: float) -> int:
         """Take up what is in the folder, and drop what is later than a time.
@@ -197,12 +198,11 @@ class SnapshotParts:
 
         The whole file, ``snapshots.h5``, takes the still fields in.
         """
-        with hdf5_beside(path) as file:
-            self.layout.add_head(file)
+        with hdf5_beside(path, self.layout.plain_template, sync_name=path == self.index) as file:
             if path == self.index:
                 with h5py.File(self.folder / STILL) as source:
                     self.layout.add_still_fields(file, {name: source[name][()] for name in STILL_FIELDS})
-            self.layout.add_fields(file, times)
+            self.layout.make_room(file, times)
             k = 0
             for part in parts:
                 with h5py.File(self.folder / part.name) as source:
@@ -213,16 +213,12 @@ class SnapshotParts:
 
     def _write_index(self, parts: Sequence[Part], times: Sequence[float]) -> None:
         """Write ``snapshots.h5`` anew, joining the parts."""
-        layout = self.layout
-        with hdf5_beside(self.index) as file:
-            layout.add_head(file)
-            for name, row in STILL_FIELDS.items():
-                shape = layout.shape(row.location)
-                layout.link_field(file, name, shape, {slice(0, shape[0]): f"{PARTS}/{STILL}"})
-            add_time(file, times, layout.epoch)
-            sources = {slice(part.first, part.beyond): f"{PARTS}/{part.name}" for part in parts}
-            for name in layout.fields:
-                layout.link_field(file, name, (len(times), *layout.shape(FIELDS[name].location)), sources)
+        with hdf5_beside(self.index, self._index_template) as file:
+            set_times(file, times)
+            sources = [(slice(part.first, part.beyond), f"{PARTS}/{part.name}") for part in parts]
+            for name in self.layout.fields:
+                shape = (len(times), *self.layout.shape(FIELDS[name].location))
+                self.layout.link_field(file, name, shape, sources)
 
     def _read_times(self, path: Path) -> list[float]:
         try:

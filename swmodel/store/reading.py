@@ -117,7 +117,11 @@ def _open(path: Path, group: str | None = None) -> Any:
     except ImportError:
         file = h5py.File(path)
         return file[group] if group else file
-    return xarray.open_dataset(path, engine="h5netcdf", group=group)
+    dataset = xarray.open_dataset(path, engine="h5netcdf")
+    if group is None:
+        return dataset
+    with dataset:
+        return xarray.open_dataset(path, engine="h5netcdf", group=group).assign_coords(time=dataset["time"].load())
 
 
 class Snapshots:

@@ -12,7 +12,7 @@ import h5py
 
 from ..errors import MachineError, RequestError
 from .durable import hdf5_beside
-from .layout import TIME_CHUNK, add_provenance, add_time, attach
+from .layout import TIME_CHUNK, add_provenance, add_time, attach, set_times
 from .names import BUDGETS, SERIES, SeriesName
 from .provenance import Provenance
 
@@ -82,11 +82,12 @@ class SeriesWriter:
         began = clock.monotonic()
         with hdf5_beside(self.path) as file:
             add_provenance(file, self.provenance)
-            axis = add_time(file, self.times, self.epoch)
+            axis = add_time(file, self.epoch)
+            set_times(file, self.times)
             for (group, name), values in self._columns.items():
                 home = _group(file, group) if group else file
-                chunk = min(len(values), TIME_CHUNK)
-                dataset = home.create_dataset(name, data=values, maxshape=(None,), chunks=(chunk,), track_order=True)
+                chunks = (TIME_CHUNK,)
+                dataset = home.create_dataset(name, data=values, maxshape=(None,), chunks=chunks, track_order=True)
                 dataset.dims[0].attach_scale(axis)
                 row = _described((group, name))
                 attach(dataset, units=row.units, long_name=row.long_name, cell_methods="time: point")

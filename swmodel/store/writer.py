@@ -80,14 +80,17 @@ class RunWriter:
         self._basin = basin
         self._output = output
         self._provenance = provenance
-        self._open_folder(resume)
-        self._lock = FolderLock(self.folder)
-        try:
-            self._check_content(resume)
-            self._log = open_log(self.folder)
-        except BaseException:
-            self._lock.release()
-            raise
+        with machine_errors(self.folder):
+            self._open_folder(resume)
+            self._lock = FolderLock(self.folder)
+            try:
+                self._check_content(resume)
+                self._log = open_log(self.folder)
+            except BaseException:
+                self._lock.release()
+                raise
+        if self._lock.left_by:
+            log.warning("the folder was left locked by %s, which has ended; taken over", self._lock.left_by)
         try:
             layout = Layout.of_run(basin, output, epoch, provenance)
             if resume:
