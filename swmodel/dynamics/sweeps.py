@@ -46,14 +46,14 @@ class Setup(NamedTuple):
     north: int
     nx: int
     ny: int
+    gathers: int
+    """1 where the last stage starts from the mean of the earlier ones (rk4); at run time, so that nothing more is compiled"""
     depth: Any
     """number, or field at centres with halo"""
     coriolis: Any
     """column, or field at corners with halo"""
     linear: Any = None
     """None, or 1"""
-    gathers: Any = None
-    """None, or 1 where the last stage starts from the mean of the earlier ones (rk4)"""
 
 
 def row(x, r):
@@ -126,7 +126,7 @@ def advance(scheme, first, buffer, y, yb, Jb, yo, j, blend, step, m):
 def last_base(gathers, base, yb, y, rolling, j, n):
     """Where the last stage starts: the set and its memory row. With rk4 that row is made here."""
     J = j + H
-    if gathers is not None:
+    if gathers != 0:
         R = J % rolling.shape[2]
         for field in range(3):
             row_gather(base[field, 0], y[field, J], rolling[0, field, R], rolling[1, field, R], rolling[2, field, R], n)
@@ -139,7 +139,8 @@ def one_pass(scheme, work, y, yb, yo, j0, j1, m):
     """Rows j0..j1-1 of yo, all stages chasing each other up the band; at a wall the overlap stops."""
     n = len(m.stages)
     rolling = work[n * ROW_BUFFERS : n * (ROW_BUFFERS + 3 * ROLLING_ROWS)].reshape((n, 3, ROLLING_ROWS, work.shape[1]))
-    base = work[n * (ROW_BUFFERS + 3 * ROLLING_ROWS) :].reshape((GATHER_ROWS, 1, work.shape[1]))
+    below = n * (ROW_BUFFERS + 3 * ROLLING_ROWS)
+    base = work[below : below + GATHER_ROWS].reshape((GATHER_ROWS, 1, work.shape[1]))
     low = 0 if m.south != 0 else -H
     high = m.ny if m.north != 0 else m.ny + H
     for k in range(j0 - 2 * (n - 1), j1 + n - 1):

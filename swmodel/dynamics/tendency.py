@@ -80,8 +80,8 @@ class Equations:
             north=north,
             nx=grid.nx,
             ny=grid.ny,
+            gathers=int(gathers),
             linear=1 if self.linear else None,
-            gathers=1 if gathers else None,
             **self._coefficients,
         )
 
