@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 import re
 from dataclasses import dataclass, replace
+from fractions import Fraction
 
 from ..errors import Fault, RequestError
 from .units import read_unit, same_dimension
@@ -159,7 +160,7 @@ def read_measured(value: object, key: Key = ()) -> Measured:
         except RequestError as error:
             fault = error.faults[0]
             raise RequestError(replace(fault, key=key, found=f"{shown(value)} has {fault.found}")) from None
-        measured = Measured(number * factor, unit)
+        measured = Measured(_product(number, factor), unit)
     elif isinstance(value, bool) or not isinstance(value, int | float):
         found = f"{shown(value)} is not a quantity"
         raise RequestError(Fault(key, found, 'a quantity is a number, or text with a unit such as "500 km"'))
@@ -171,6 +172,16 @@ def read_measured(value: object, key: Key = ()) -> Measured:
     if not math.isfinite(measured.value):
         raise RequestError(Fault(key, f"{shown(value)} is not a finite number"))
     return measured
+
+
+def _product(number: float, factor: float) -> float:
+    """Multiply the number as it was written, in decimals, with one rounding: 2.2 day is 190080 s to the last bit."""
+    if not math.isfinite(number):
+        return number
+    try:
+        return float(Fraction(repr(number)) * Fraction(factor))
+    except OverflowError:
+        return math.copysign(math.inf, number)
 
 
 def read_quantity(value: object, dimension: Dimension, key: Key = ()) -> float:
