@@ -25,6 +25,14 @@ DATE_KEYS = (("time", "start"),)  # where a TOML date may stand
 
 Key = tuple[str | int, ...]
 
+_QUOTES = 'write text, and numbers with a unit, between quotes: "500 km"'
+_TOML_HINTS = {
+    "Invalid value": _QUOTES,
+    "Expected newline": _QUOTES,
+    "Cannot overwrite": "write every key once",
+    "Cannot declare": "write every table once",
+}
+
 
 @dataclass(frozen=True)
 class Document:
@@ -56,8 +64,7 @@ class Document:
 
     def _placed(self, fault: Fault) -> Fault:
         for key, origin in reversed(self.outside):
-            shorter = min(len(key), len(fault.key))
-            if shorter and key[:shorter] == fault.key[:shorter] and len(fault.key) >= len(key):
+            if fault.key[: len(key)] == key:
                 return fault.placed(origin, None)
         if self.path is None:
             return fault
@@ -118,11 +125,11 @@ def read_document(path: Path) -> Document:
     try:
         values = tomli.loads(text)
     except tomli.TOMLDecodeError as error:
-        remedy = 'write text, and numbers with a unit, between quotes: "500 km"'
-        message = f"{error.msg[:1].lower()}{error.msg[1:]} (column {error.colno})"
-        raise RequestError(Fault((), message, "TOML", remedy, str(path), error.lineno)) from None
+        found = f"this is not TOML: {error.msg[:1].lower()}{error.msg[1:]} (column {error.colno})"
+        hints = (hint for start, hint in _TOML_HINTS.items() if error.msg.startswith(start))
+        raise RequestError(Fault((), found, "", next(hints, ""), str(path), error.lineno)) from None
     except RecursionError:
-        raise RequestError(Fault((), "lists or tables nested too deep", "TOML", file=str(path))) from None
+        raise RequestError(Fault((), "lists or tables are nested too deep", file=str(path))) from None
     return Document(absolute_paths(values, path.absolute().parent), text, path, Places(text))
 
 

@@ -113,16 +113,16 @@ def _one(path: Path, error: ErrorDetails, document: Mapping[str, Any], model: ty
         limit = limits.get("max_length", limits.get("min_length"))
         bound = "at most" if kind == "too_long" else "at least"
         length = len(value) if isinstance(value, list) else limits["actual_length"]
-        return Fault(path, f"a list of {length}", f"a list of {bound} {limit}")
+        return Fault(path, f"a list of {length}", f"a list of {bound} {limit} is needed")
     if kind == "string_too_short":
         return Fault(path, "the text is empty")
     if kind == "tuple_type" and isinstance(value, dict) and len(path) == 1:
-        return Fault(path, f"[{path[0]}] is one table", "a list of tables", f"write [[{path[0]}]]")
+        return Fault(path, f"[{path[0]}] is one table", "a list of tables is needed", f"write [[{path[0]}]]")
     if kind == "model_type" and isinstance(value, list) and len(path) == 1:
-        return Fault(path, f"[[{path[0]}]] is a list of tables", "one table", f"write [{path[0]}]")
+        return Fault(path, f"[[{path[0]}]] is a list of tables", "one table is needed", f"write [{path[0]}]")
     if kind in _LIMITS:
         word, name = _LIMITS[kind]
-        return Fault(path, f"{shown(value)} is out of range", f"{word} {limits[name]:g}")
+        return Fault(path, f"{shown(value)} is out of range", f"{word} {limits[name]:g} is needed")
     if kind in _TYPES:
         return Fault(path, f"{shown(value)} is not {_TYPES[kind]}", remedy=_unquoted(value, kind))
     return Fault(path, f"{shown(value)}: {error['msg']}")
@@ -197,7 +197,7 @@ def _missing(path: Path, document: Mapping[str, Any], model: type[Choice]) -> Fa
     """Say that a key, a table or an item of a list is missing."""
     name = path[-1]
     if isinstance(name, int):  # pydantic tells the places of a list of fixed length that are not there
-        return Fault(path[:-1], f"a list of {_length(path[:-1], document)}", f"a list of {name + 1}")
+        return Fault(path[:-1], f"a list of {_length(path[:-1], document)}", f"a list of {name + 1} is needed")
     inside = class_at(path[:-1], model, document)
     if inside is None:
         return Fault(path, f"{name} is missing")
@@ -205,7 +205,7 @@ def _missing(path: Path, document: Mapping[str, Any], model: type[Choice]) -> Fa
     if len(path) == 1 and len(tables := _classes(field.annotation)) == 1:
         needed = ", ".join(key for key in keys_of(tables[0]) if _field(tables[0], key).is_required())
         return Fault(path, f"the table [{name}] is missing", f"it needs {needed}")
-    return Fault(path, f"{name} is missing", field.description or "")
+    return Fault(path, f"{name} is missing", f"needed: {field.description}" if field.description else "")
 
 
 def _length(path: Path, document: Any) -> int:
