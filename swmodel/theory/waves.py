@@ -148,7 +148,8 @@ def kelvin_direction(f0: float, edge: Edge | None, beta: float = 0.0) -> int:
     if edge is None and f0 != 0:
         raise RequestError(Fault((), "a Kelvin wave off the equator needs its edge", ", ".join(KELVIN_DIRECTION)))
     if turning == 0:
-        raise RequestError(Fault((), "there is no Kelvin wave without rotation", "f0 that is not 0"))
+        name = "f0" if edge is not None else "beta"
+        raise RequestError(Fault((), "there is no Kelvin wave without rotation", f"{name} that is not 0"))
     sense = 1 if turning > 0 else -1
     return sense * (KELVIN_DIRECTION[edge] if edge is not None else 1)
 
