@@ -77,14 +77,14 @@ def derive(
     Returns
     -------
     ndarray
-        At the location that `DERIVED` names. On a ``"cut"`` side what would need values from beyond it is NaN.
+        At the location that `store.names` gives. On a ``"cut"`` side what would need values from beyond it is NaN.
 
     Raises
     ------
     KeyError
         Where `DERIVED` has no such name.
     """
-    return DERIVED[name].function(Flow(u, v, eta, depth, f, dx, dy, edges, slip, linear))
+    return DERIVED[name](Flow(u, v, eta, depth, f, dx, dy, edges, slip, linear))
 
 
 def thickness(flow: Flow) -> Array:
@@ -161,35 +161,10 @@ def _beyond(a: Array, axis: int, side: Side, mirror: float, *, upper: bool = Fal
     return factor * np.take(a, [inner], axis)
 
 
-@dataclass(frozen=True)
-class Derived:
-    """One derived field.
-
-    Parameters
-    ----------
-    function : callable
-        `Flow` to array.
-    location : str
-        ``"centre"`` or ``"corner"``.
-    unit : str
-        SI unit, written as in `quantities`.
-    meaning : str
-        One line.
-    source : str
-        Where its form comes from.
-    """
-
-    function: Callable[[Flow], Array]
-    location: Literal["centre", "corner"]
-    unit: str
-    meaning: str
-    source: str = "definition"
-
-
-DERIVED: dict[str, Derived] = {
-    "h": Derived(thickness, "centre", "m", "thickness of the layer, H + eta"),
-    "divergence": Derived(divergence, "centre", "1/s", "divergence of the velocity"),
-    "speed": Derived(speed, "centre", "m/s", "speed of the flow, sqrt(2 K)", "Arakawa & Lamb 1981"),
-    "vorticity": Derived(vorticity, "corner", "1/s", "relative vorticity"),
-    "pv": Derived(potential_vorticity, "corner", "1/m/s", "potential vorticity, (f + zeta)/h", "Arakawa & Lamb 1981"),
+DERIVED: dict[str, Callable[[Flow], Array]] = {
+    "h": thickness,
+    "divergence": divergence,
+    "speed": speed,
+    "vorticity": vorticity,
+    "pv": potential_vorticity,
 }
