@@ -110,7 +110,7 @@ class MachineError(SwmodelError):
     exit_code = 4
 
 
-class StopRequested(SwmodelError):
+class StopRequested(SwmodelError):  # noqa: N818  (it is no error of anyone's)
     """A signal asked the run to stop; its state is in a checkpoint.
 
     Parameters

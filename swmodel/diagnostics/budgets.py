@@ -4,8 +4,8 @@ Exact for any stepper: over a step,
 
     E(new) - E(old) = sum mean(h_u) mean(u) du + mean(h_v) mean(v) dv + [cell mean of mean(u^2 + v^2)/2 + g mean(eta)] deta
 
-with mean = (old + new)/2 (equation 8 of docs/equations.md). A process p that changes the fields by du_p, dv_p, deta_p has
-that sum as its share. The conservative terms, weighted as the stepper weights its stages, leave the time-stepping
+with mean = (old + new)/2 (equation 8 of docs/equations.md). A process p that changes the fields by du_p, dv_p, deta_p
+has that sum as its share. The conservative terms, weighted as the stepper weights its stages, leave the time-stepping
 remainder; leapfrog's filter is a process of its own.
 """
 
@@ -13,18 +13,22 @@ from __future__ import annotations
 
 import numpy as np
 from numba import njit, prange
+from numpy.typing import NDArray
 
 from ..dynamics.compilation import ONE, OPTIONS, U8, row_jit
-from ..dynamics.kernels import at, thickness
-from ..dynamics.sweeps import one_step, periodic_rows, row
+from ..dynamics.kernels import thickness
+from ..dynamics.edges import periodic_rows
+from ..dynamics.sweeps import one_step, row
 from ..dynamics.tendency import Equations
 from ..grid.domain import HALO_X as W
 from ..grid.domain import HALO_Y as H
-from ..grid.domain import Array, allocate, ordered_sum
+from ..grid.domain import allocate, ordered_sum
 from ..state import State
 from ..steppers import STEPPERS, Stepper, TimeSettings
 
 KINETIC, POTENTIAL, CHANGE = range(3)
+
+Rows = NDArray[np.float64]
 
 
 @njit(parallel=True, cache=True, **OPTIONS)
@@ -34,9 +38,7 @@ def accumulate(total, T, share, Y, y, blend, step):
         for field in range(3):
             for i in range(U8(0), U8(T.shape[2])):
                 total[field, r, i] += share * T[field, r, i]
-                Y[field, r, i] = y[field, r, i] + (
-                    blend * (Y[field, r, i] - y[field, r, i]) + step * T[field, r, i]
-                )
+                Y[field, r, i] = y[field, r, i] + (blend * (Y[field, r, i] - y[field, r, i]) + step * T[field, r, i])
 
 
 @row_jit
@@ -59,7 +61,9 @@ def energy_row(out, old, new, change, r, S, N, depth, depths, linear, gravity, n
         eta0 = float(old[2, r, i])
         eta1 = float(new[2, r, i])
         deta = float(change[2, r, i])
-        kinetic += 0.25 * ((hu0 + hu1) * (u0 + u1) * float(change[0, r, i]) + (hv0 + hv1) * (v0 + v1) * float(change[1, r, i]))
+        kinetic += 0.25 * (
+            (hu0 + hu1) * (u0 + u1) * float(change[0, r, i]) + (hv0 + hv1) * (v0 + v1) * float(change[1, r, i])
+        )
         if linear is None:
             squares = u0 * u0 + u1 * u1 + float(old[0, r, e]) ** 2 + float(new[0, r, e]) ** 2
             squares += v0 * v0 + v1 * v1 + float(old[1, N, i]) ** 2 + float(new[1, N, i]) ** 2
@@ -79,7 +83,18 @@ def energy_rows(old, new, change, m):
     for j in prange(m.ny):
         r = j + H
         energy_row(
-            out[j], old, new, change, r, r - 1, r + 1, row(m.depth, r), row(m.depth, r - 1), m.linear, float(m.gravity), m.nx
+            out[j],
+            old,
+            new,
+            change,
+            r,
+            r - 1,
+            r + 1,
+            row(m.depth, r),
+            row(m.depth, r - 1),
+            m.linear,
+            float(m.gravity),
+            m.nx,
         )
     return out
 
@@ -161,7 +176,7 @@ class EnergyBudget:
         rows = energy_rows(old, new, total, setup)
         return self._terms(rows, energy_rows(old, new, np.ascontiguousarray(filtered), setup), 2 * dt)
 
-    def _terms(self, rows: Array, filter_rows: Array | None, span: float) -> dict[str, float]:
+    def _terms(self, rows: Rows, filter_rows: Rows | None, span: float) -> dict[str, float]:
         grid = self.equations.basin.grid
         scale = grid.dx * grid.dy / span
         kinetic, potential, change = (ordered_sum(rows[:, k]) * scale for k in (KINETIC, POTENTIAL, CHANGE))

@@ -26,4 +26,3 @@ class NumericsSettings(Choice):
     pv_flux: Annotated[PVFluxName, Field(description="scheme of the Coriolis term")] = "both"
     linear: Annotated[bool, Field(description="drop advection, take the depth at rest in the fluxes")] = False
     threads: Annotated[int, Field(ge=1)] | None = None
-

@@ -12,6 +12,7 @@ import logging
 import os
 import tempfile
 from pathlib import Path
+from typing import Any
 
 import numba
 import numpy as np
@@ -21,8 +22,8 @@ log = logging.getLogger(__name__)
 
 # contraction and reciprocals are allowed, reassociation is not: results must not depend on the band of rows
 FAST = {"contract", "arcp", "nsz"}
-OPTIONS = {"fastmath": FAST, "error_model": "numpy"}
-INLINED = {"jit_options": {"forceinline": True, **OPTIONS}}
+OPTIONS: dict[str, Any] = {"fastmath": FAST, "error_model": "numpy"}
+INLINED: dict[str, Any] = {"jit_options": {"forceinline": True, **OPTIONS}}
 row_jit = njit(forceinline=True, **OPTIONS)
 
 # Unsigned indices: a signed one makes LLVM test for wrap-around, and the loop stays scalar (measured: 4.8 times slower)
@@ -60,4 +61,5 @@ def source_digest(folders: tuple[Path, ...] = KERNEL_FOLDERS) -> str:
     return digest.hexdigest()[:16]
 
 
-numba.config.CACHE_DIR = str(cache_folder() / "kernels" / source_digest())
+_config: Any = numba.config
+_config.CACHE_DIR = str(cache_folder() / "kernels" / source_digest())

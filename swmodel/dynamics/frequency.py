@@ -96,5 +96,9 @@ def _closed(a: Any, axis: int, grid: Grid) -> Any:
     periodic = grid.periodic_x if axis == 1 else grid.periodic_y
     if periodic:
         return np.concatenate([a, np.take(a, [0], axis)], axis)
-    wall = np.zeros_like(np.take(a, [0], axis)) if a.shape[axis] else np.zeros((a.shape[0], 1) if axis else (1, a.shape[1]))
+    wall = (
+        np.zeros_like(np.take(a, [0], axis))
+        if a.shape[axis]
+        else np.zeros((a.shape[0], 1) if axis else (1, a.shape[1]))
+    )
     return np.concatenate([wall, a, wall], axis)

@@ -1,7 +1,7 @@
 """Row kernels: the equations over one row, fused. reference.py says the same in plain NumPy, name for name.
 
-`at` and `row` read a coefficient that may be a number, a column (one value a row) or a field; which it is, is settled by
-its type when the kernel is compiled. Tests for None stand only in functions that take the option as an argument: there
+`at` and `row` read a coefficient that may be a number, a column (one value a row) or a field; which it is, is settled
+by its type when the kernel is compiled. Tests for None stand only in functions that take the option as an argument: there
 numba drops the dead branch. U = h u, V = h v, B = K + g eta and q/24 live in rolling row buffers, never as full fields.
 
 Rows are read from ``W - 1`` to ``n + W``: one ghost column on either side.
@@ -32,7 +32,7 @@ def _at(x, i):
 
 @row_jit
 def thickness(linear, depth, eta, i):
-    """h = H + eta; H where the equations are linear."""
+    """H = H + eta; H where the equations are linear."""
     if linear is None:
         return at(depth, i) + eta[i]
     return at(depth, i)
@@ -40,7 +40,7 @@ def thickness(linear, depth, eta, i):
 
 @row_jit
 def absolute_vorticity(linear, f, zeta):
-    """f + zeta; f where the equations are linear."""
+    """F + zeta; f where the equations are linear."""
     if linear is None:
         return f + zeta
     return f
@@ -83,9 +83,7 @@ def row_centres(U, B, u, v, vn, eta, depth, linear, gravity, n):
 
 
 @row_jit
-def row_update(
-    scheme, uo, vo, eo, ub, vb, eb, u, v, eta, qs, q, qn, Vs, V, Vn, Us, U, Bs, B, blend, step, rx, ry, n
-):
+def row_update(scheme, uo, vo, eo, ub, vb, eb, u, v, eta, qs, q, qn, Vs, V, Vn, Us, U, Bs, B, blend, step, rx, ry, n):
     """One stage over a row: out = base + (blend (y - base) + step dy/dt), so that a constant stays one to the last bit.
 
     Rows ``uo, vo, eo`` are written, ``ub, vb, eb`` are the base; equations 1 to 3.

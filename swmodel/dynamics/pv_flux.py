@@ -1,9 +1,9 @@
 """The PV flux (the Coriolis term), chosen by name.
 
-A scheme is a point function over rows, picked at compile time by the type of an empty NamedTuple: that survives the disk
-cache, which closures and functions passed as arguments do not. To add one: its marker type and its row in schemes.py, its
-point function here with one entry in `POINT_FUNCTIONS`, its plain twin in reference.py; the tests that hold for every row
-run on it unasked.
+A scheme is a point function over rows, picked at compile time by the type of an empty NamedTuple: that survives the
+disk cache, which closures and functions passed as arguments do not. To add one: its marker type and its row in
+schemes.py, its point function here with one entry in `POINT_FUNCTIONS`, its plain twin in reference.py; the tests that
+hold for every row run on it unasked.
 
 All point functions take ``(aspect, i, qs, q, qn, Vs, V, Vn, Us, U)``: `q` holds 1/24 of the PV at the corners of a row,
 U = h u at x-faces, V = h v at y-faces; suffix s is the row to the south, n to the north; aspect = dy/dx. They return
@@ -24,7 +24,9 @@ def flux_energy(aspect, i, qs, q, qn, Vs, V, Vn, Us, U):
     e = i + ONE
     w = i - ONE
     six = q.dtype.type(6)
-    return six * (q[i] * (V[i] + V[w]) + qn[i] * (Vn[i] + Vn[w])), -six * (q[i] * (U[i] + Us[i]) + q[e] * (U[e] + Us[e]))
+    return six * (q[i] * (V[i] + V[w]) + qn[i] * (Vn[i] + Vn[w])), -six * (
+        q[i] * (U[i] + Us[i]) + q[e] * (U[e] + Us[e])
+    )
 
 
 @row_jit

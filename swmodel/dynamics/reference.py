@@ -78,7 +78,9 @@ def flux_both(q: Array, U: Array, V: Array, aspect: float) -> tuple[Array, Array
 FLUXES = {"energy": flux_energy, "enstrophy": flux_enstrophy, "both": flux_both}
 
 
-def with_rim(a: Array, periodic: tuple[bool, bool], face: tuple[bool, bool], sign: tuple[float, float, float, float]) -> Array:
+def with_rim(
+    a: Array, periodic: tuple[bool, bool], face: tuple[bool, bool], sign: tuple[float, float, float, float]
+) -> Array:
     """Return `a` with its rim: round the domain, or mirrored at walls with a sign.
 
     Parameters

@@ -14,7 +14,6 @@ import numpy as np
 from numba import njit, prange, types
 from numba.extending import overload
 
-from ..grid.domain import HALO_X as W
 from ..grid.domain import HALO_Y as H
 from .compilation import INLINED, OPTIONS, U8, row_jit
 from .edges import edge_columns, edge_rows, periodic_rows
@@ -47,7 +46,7 @@ class Setup(NamedTuple):
     nx: int
     ny: int
     gathers: int
-    """1 where the last stage starts from the mean of the earlier ones (rk4); at run time, so that nothing more is compiled"""
+    """1 where the last stage starts from the mean of the earlier ones (rk4): a run-time number, to compile less"""
     depth: Any
     """number, or field at centres with halo"""
     coriolis: Any
@@ -161,7 +160,7 @@ def one_pass(scheme, work, y, yb, yo, j0, j1, m):
 
 @njit(parallel=True, cache=True, **OPTIONS)
 def one_step(scheme, work, y, yb, yo, m, bands):
-    """yo = one step from y (base yb), a band of rows a thread; ghost rows of a periodic direction are not filled."""
+    """Yo = one step from y (base yb), a band of rows a thread; ghost rows of a periodic direction are not filled."""
     for t in prange(bands):
         one_pass(scheme, work[t], y, yb, yo, m.ny * t // bands, m.ny * (t + 1) // bands, m)
 

@@ -10,7 +10,6 @@ import numpy as np
 
 from ..grid import Basin
 from ..grid.domain import Array, allocate, inside_centre, inside_u, inside_v, row_stride, spread, usable_cores
-from . import reference
 from .edges import FREE_SLIP, NO_SLIP, PERIODIC, fill_edges, periodic_rows
 from .schemes import PVFlux
 from .sweeps import Setup, one_step, work_rows
@@ -19,7 +18,8 @@ EULER = ((0.0, 1.0),)  # out = base + dt T: with base 0 and dt 1 it is the tende
 ROWS_A_BAND = 24  # fewer rows a thread and the overlap that each band recomputes eats the gain
 CELLS_A_BAND = 4096
 
-numba.config.THREADING_LAYER_PRIORITY = ["omp", "tbb", "workqueue"]
+numba_config: Any = numba.config
+numba_config.THREADING_LAYER_PRIORITY = ["omp", "tbb", "workqueue"]
 
 
 class Equations:
@@ -41,7 +41,7 @@ class Equations:
         self.basin = basin
         self.pv_flux = pv_flux
         self.linear = linear
-        self.threads = min(threads or usable_cores(), int(numba.config.NUMBA_NUM_THREADS))
+        self.threads = min(threads or usable_cores(), int(numba_config.NUMBA_NUM_THREADS))
 
     @property
     def bands(self) -> int:
@@ -92,7 +92,7 @@ class Equations:
 
     def claim_threads(self) -> None:
         """Let the next kernel use one thread a band, as far as there are threads."""
-        numba.set_num_threads(min(self.bands, int(numba.config.NUMBA_NUM_THREADS)))
+        numba.set_num_threads(min(self.bands, int(numba_config.NUMBA_NUM_THREADS)))
 
     def fill(self, level: Array) -> None:
         """Fill the ghost cells of a set (u, v, eta) from its inside."""
@@ -105,24 +105,19 @@ class Equations:
         one_step(self.pv_flux.scheme, work, level, base, out, setup, self.bands)
         periodic_rows(out, setup)
 
-    def tendency(self, u: Array, v: Array, eta: Array, linear: bool | None = None) -> tuple[Array, Array, Array]:
-        """Rates of change of u, v, eta, all with both ends.
+    def tendency(self, u: Array, v: Array, eta: Array) -> tuple[Array, Array, Array]:
+        """Rates of change of u, v, eta by the fused kernels, all with both ends; `plain.PlainEquations` says the same.
 
         Parameters
         ----------
         u, v, eta : ndarray ``[ny, nx + 1]``, ``[ny + 1, nx]``, ``[ny, nx]``
             Velocities on faces, m/s; elevation at centres, m.
-        linear : bool, optional
-            As the run itself by default. Where it differs from the run's own, the plain twin answers, so that nothing
-            more is compiled.
 
         Returns
         -------
         tuple of ndarray
             du/dt, dv/dt, m s-2; deta/dt, m/s.
         """
-        if linear is not None and linear != self.linear:
-            return self.plain_tendency(u, v, eta, linear)
         grid = self.basin.grid
         sets = allocate(grid, 3)
         level, out, base = sets[0:3], sets[3:6], sets[6:9]
@@ -131,21 +126,3 @@ class Equations:
         self.fill(level)
         self.stage_tendency(level, out, base, self.workspace(1))
         return inside_u(out[0], grid), inside_v(out[1], grid), inside_centre(out[2], grid)
-
-    def plain_tendency(self, u: Array, v: Array, eta: Array, linear: bool) -> tuple[Array, Array, Array]:
-        """The same by the plain twin."""
-        return reference.tendency(
-            u,
-            v,
-            eta,
-            depth=self.basin.depth,
-            f=self.basin.f,
-            gravity=self.basin.gravity,
-            dx=self.basin.grid.dx,
-            dy=self.basin.grid.dy,
-            edges=(self.basin.grid.west, self.basin.grid.east, self.basin.grid.south, self.basin.grid.north),
-            slip=self.basin.grid.slip,
-            pv_flux=self.pv_flux.plain,
-            linear=linear,
-        )
-

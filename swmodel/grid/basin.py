@@ -75,7 +75,7 @@ class Basin:
 
     @property
     def deformation_radius(self) -> float:
-        """a = c/|f0|, on the equatorial plane sqrt(c/beta), m; infinite without rotation."""
+        """A = c/|f0|, on the equatorial plane sqrt(c/beta), m; infinite without rotation."""
         if self.frame.plane == "equatorial":
             return math.sqrt(self.wave_speed / abs(self.frame.beta))
         return self.wave_speed / abs(self.frame.f0) if self.frame.f0 else math.inf
@@ -116,7 +116,9 @@ def build_basin(grid: Grid, frame: Frame, layer: LayerSettings) -> Basin:
                 ("layer", "depth"),
                 f"the thickness at rest is {low:.6g} m at x = {grid.x[i]:.6g} m, y = {grid.y[j]:.6g} m",
                 "a thickness above 0 everywhere",
-                "deepen the layer there, or turn the table more slowly" if frame.plane == "tank" else "deepen the layer",
+                "deepen the layer there, or turn the table more slowly"
+                if frame.plane == "tank"
+                else "deepen the layer",
             )
         )
     even = bool(np.all(depth == depth.flat[0]))
@@ -141,7 +143,9 @@ def _rest_thickness(grid: Grid, frame: Frame, layer: LayerSettings, gravity: flo
         raise RequestError(
             Fault(("layer", "depth"), f"the depth uses {names}, which follow from it", remedy="give reference_depth")
         )
-    depth = np.array(np.broadcast_to(evaluate(layer.depth, x, y, constants, key=("layer", "depth")), (grid.ny, grid.nx)))
+    depth = np.array(
+        np.broadcast_to(evaluate(layer.depth, x, y, constants, key=("layer", "depth")), (grid.ny, grid.nx))
+    )
     if frame.plane == "tank" and layer.reduced_gravity is None:
         r2 = np.broadcast_to(x**2 + y**2, depth.shape)
         depth = depth + frame.rotation_rate**2 * (r2 - r2.mean()) / (2 * gravity)

@@ -90,7 +90,8 @@ def _sources(n: int, length: int, rim: int, periodic: bool, corner: bool) -> NDA
     if corner:
         return k.clip(0, n)
     mirrored = np.where(k < 0, -1 - k, k)
-    return np.minimum(mirrored, 2 * n - 1 - mirrored).clip(0, n - 1)
+    folded: NDArray[np.intp] = np.minimum(mirrored, 2 * n - 1 - mirrored)
+    return folded.clip(0, n - 1)
 
 
 def ordered_sum(rows: NDArray[np.float64]) -> float:

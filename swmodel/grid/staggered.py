@@ -23,7 +23,9 @@ class GridSettings(Choice):
     """`[grid]`: how many cells, how large, where the origin lies, and in which precision."""
 
     cells: Annotated[tuple[Annotated[int, Field(ge=1)], Annotated[int, Field(ge=1)]], Field(description="[nx, ny]")]
-    size: Annotated[tuple[Annotated[Length, Field(gt=0)], Annotated[Length, Field(gt=0)]], Field(description="[Lx, Ly]")]
+    size: Annotated[
+        tuple[Annotated[Length, Field(gt=0)], Annotated[Length, Field(gt=0)]], Field(description="[Lx, Ly]")
+    ]
     origin: Annotated[
         Literal["centre", "corner"], Field(description='where x = y = 0 lies; "corner" is the south-west one')
     ] = "centre"
@@ -104,22 +106,22 @@ class Grid:
     @cached_property
     def x(self) -> NDArray[np.float64]:
         """Abscissae of the centres, m, ``[nx]``."""
-        return self.west_x + (np.arange(self.nx) + 0.5) * self.dx
+        return np.asarray(self.west_x + (np.arange(self.nx) + 0.5) * self.dx, np.float64)
 
     @cached_property
     def y(self) -> NDArray[np.float64]:
         """Ordinates of the centres, m, ``[ny]``."""
-        return self.south_y + (np.arange(self.ny) + 0.5) * self.dy
+        return np.asarray(self.south_y + (np.arange(self.ny) + 0.5) * self.dy, np.float64)
 
     @cached_property
     def x_face(self) -> NDArray[np.float64]:
         """Abscissae of x-faces and corners, m, ``[nx + 1]``."""
-        return self.west_x + np.arange(self.nx + 1) * self.dx
+        return np.asarray(self.west_x + np.arange(self.nx + 1) * self.dx, np.float64)
 
     @cached_property
     def y_face(self) -> NDArray[np.float64]:
         """Ordinates of y-faces and corners, m, ``[ny + 1]``."""
-        return self.south_y + np.arange(self.ny + 1) * self.dy
+        return np.asarray(self.south_y + np.arange(self.ny + 1) * self.dy, np.float64)
 
     def axes(self, location: Location) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Return the 1-D x and y of a location."""
