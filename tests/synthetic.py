@@ -4,10 +4,14 @@ import numpy as np
 
 from swmodel.frame import FrameSettings, build_frame
 from swmodel.grid import Basin, Grid
-from swmodel.measures import Record
+from swmodel.measures import MEASURES, Record
+
+HOUR = 3600.0
+DAY = 86400.0
 
 PERIODIC = {"west": "periodic", "east": "periodic", "south": "periodic", "north": "periodic"}
 WALLS = {"west": "wall", "east": "wall", "south": "wall", "north": "wall"}
+CHANNEL = PERIODIC | {"south": "wall", "north": "wall"}
 
 
 def make_basin(nx=16, ny=8, dx=1000.0, dy=500.0, *, edges=PERIODIC, f0=1e-4, gravity=0.02, depth=100.0, **frame):
@@ -27,3 +31,14 @@ def make_record(basin, times, *, eta=None, u=None, v=None, linear=True, **more):
         values = [np.zeros(shape) if function is None else np.broadcast_to(function(x, y, t), shape) for t in times]
         fields[name] = np.array(values)
     return Record.from_memory(basin, np.asarray(times, float), fields, linear=linear, **more)
+
+
+def measure(kind, **keys):
+    """Read a measure as a configuration does; `from_` stands for the key `from`."""
+    keys = {key.rstrip("_"): value for key, value in keys.items()}
+    return MEASURES[kind].model_validate({"kind": kind, **keys})
+
+
+def told(one, record, period=None):
+    """What would be refused before the run: keys and what was found."""
+    return [(".".join(map(str, fault.key)), fault.found) for fault in one.faults(record, period)]
