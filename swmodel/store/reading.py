@@ -227,6 +227,7 @@ class Snapshots:
         if self._last is None or self._last[0] != path:
             if self._last is not None:
                 self._last[1].close()
+                self._last = None
             self._last = (path, _opened(path))
         return self._last[1]
 
