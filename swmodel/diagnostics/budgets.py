@@ -2,11 +2,12 @@
 
 Exact for any stepper: over a step,
 
-    E(new) - E(old) = sum mean(h_u) mean(u) du + mean(h_v) mean(v) dv + [cell mean of mean(u^2 + v^2)/2 + g mean(eta)] deta
+    E(new) - E(old) = sum mean(h_u) mean(u) du + mean(h_v) mean(v) dv
+                          + [cell mean of mean(u^2 + v^2)/2 + g mean(eta)] deta                                      (8)
 
-with mean = (old + new)/2 (equation 8 of docs/equations.md). A process p that changes the fields by du_p, dv_p, deta_p
-has that sum as its share. The conservative terms, weighted as the stepper weights its stages, leave the time-stepping
-remainder; leapfrog's filter is a process of its own.
+with mean = (old + new)/2. A process p that changes the fields by du_p, dv_p, deta_p has that sum as its share. The
+conservative terms, weighted as the stepper weights its stages, leave the time-stepping remainder; leapfrog's filter is
+a process of its own.
 """
 
 from __future__ import annotations
@@ -16,8 +17,8 @@ from numba import njit, prange
 from numpy.typing import NDArray
 
 from ..dynamics.compilation import ONE, OPTIONS, U8, row_jit
-from ..dynamics.kernels import thickness
 from ..dynamics.edges import periodic_rows
+from ..dynamics.kernels import thickness
 from ..dynamics.sweeps import one_step, row
 from ..dynamics.tendency import Equations
 from ..grid.domain import HALO_X as W
@@ -158,7 +159,7 @@ class EnergyBudget:
         return self._terms(rows, None, dt)
 
     def _leapfrog(self, state: State, dt: float, stepper: Stepper) -> dict[str, float]:
-        """From the level before the present to the one after it; the filter's share is what it takes from the latter."""
+        """From the level before the present to the one after it, of which the filter takes its share."""
         equations = self.equations
         now, old, new = (state.sets[3 * k : 3 * k + 3] for k in range(3))
         _, T, total, zero = (self._scratch[3 * k : 3 * k + 3] for k in range(4))

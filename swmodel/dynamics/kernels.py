@@ -1,8 +1,9 @@
 """Row kernels: the equations over one row, fused. reference.py says the same in plain NumPy, name for name.
 
 `at` and `row` read a coefficient that may be a number, a column (one value a row) or a field; which it is, is settled
-by its type when the kernel is compiled. Tests for None stand only in functions that take the option as an argument: there
-numba drops the dead branch. U = h u, V = h v, B = K + g eta and q/24 live in rolling row buffers, never as full fields.
+by its type when the kernel is compiled. Tests for None stand only in functions that take the option as an argument:
+there numba drops the dead branch. U = h u, V = h v, B = K + g eta and q/24 live in rolling row buffers, never as full
+fields.
 
 Rows are read from ``W - 1`` to ``n + W``: one ghost column on either side.
 """

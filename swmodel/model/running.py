@@ -16,7 +16,7 @@ from typing import TYPE_CHECKING, Any
 from ..errors import RequestError, SolutionError, StopRequested
 from ..measures import ExpectSettings, Record, Verdict
 from ..measures import judge as judge_record
-from ..outlook.outlook import check
+from ..outlook import Outlook, check
 from ..outlook.plan import Begun, Plan, make_basin, make_plan, run_folder_name
 from ..quantities import TIME, format_quantity, read_quantity
 from ..settings import Experiment
@@ -65,6 +65,7 @@ def run(
     *,
     start: Any = None,
     pv_flux: PVFlux | None = None,
+    outlook: Outlook | None = None,
     progress: Report | None = None,
 ) -> Run:
     """Check an experiment, run it, store it and judge it.
@@ -79,6 +80,8 @@ def run(
         Start states of your own: objects with ``fields(basin)``.
     pv_flux : PVFlux, optional
         A PV flux of your own.
+    outlook : Outlook, optional
+        What `check` said of this very experiment; by default it is asked here.
     progress : callable, optional
         Told a `Progress` now and then.
 
@@ -98,7 +101,7 @@ def run(
     StopRequested
         Where a signal asked it to stop; a checkpoint was written.
     """
-    outlook = check(experiment, start=start, pv_flux=pv_flux)
+    outlook = outlook or check(experiment, start=start, pv_flux=pv_flux)
     if outlook.refusals or outlook.plan is None:
         raise experiment.placed(RequestError(outlook.refusals))
     plan = outlook.plan
