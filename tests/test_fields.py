@@ -7,7 +7,7 @@ import math
 import numpy as np
 import pytest
 import scipy.special
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from swmodel.choices import Choice
@@ -135,6 +135,7 @@ def pairs() -> st.SearchStrategy[tuple[str, np.ndarray]]:
     return st.recursive(leaves, grow, max_leaves=10)
 
 
+@settings(deadline=None)  # the machine may be busy
 @given(pairs())
 def test_every_formula_of_the_grammar_agrees_with_numpy(pair: tuple[str, np.ndarray]) -> None:
     text, expected = pair
@@ -142,6 +143,7 @@ def test_every_formula_of_the_grammar_agrees_with_numpy(pair: tuple[str, np.ndar
     np.testing.assert_array_equal(Formula(text).values(KNOWN), expected)
 
 
+@settings(deadline=None)  # the machine may be busy
 @given(st.lists(st.sampled_from(["x", "y", "H", "2.5", "x**2", "-x", "-y**2"]), min_size=1, max_size=8), st.data())
 def test_operators_bind_as_in_python(terms: list[str], data: st.DataObject) -> None:
     signs = [data.draw(st.sampled_from(["+", "-", "*", "/", "//", "%"])) for _ in terms[1:]]
@@ -152,6 +154,7 @@ def test_operators_bind_as_in_python(terms: list[str], data: st.DataObject) -> N
     np.testing.assert_array_equal(Formula(text).values(KNOWN), np.asarray(expected, float))
 
 
+@settings(deadline=None)  # the machine may be busy
 @given(st.one_of(st.text(max_size=80), st.text(alphabet="xyagH()+-*/.,^<>=! 0123456789eif[]{}:'\"_@\\\n", max_size=80)))
 def test_the_parser_never_raises_anything_but_a_request_error(text: str) -> None:
     try:

@@ -8,7 +8,7 @@ from typing import Annotated
 import numpy as np
 import pint
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 from pydantic import Field, ValidationError
 
@@ -165,6 +165,7 @@ def test_a_rate_may_carry_its_radian_or_not_and_nothing_else_may_drop_it() -> No
     assert not same_dimension("1/s", "1/s^2")
 
 
+@settings(deadline=None)  # the machine may be busy
 @given(st.text(max_size=60))
 def test_the_reader_never_raises_anything_but_a_request_error(text: str) -> None:
     for candidate in (text, f"5 {text}", f"5 m {text}"):
@@ -175,6 +176,7 @@ def test_the_reader_never_raises_anything_but_a_request_error(text: str) -> None
         assert math.isfinite(value)
 
 
+@settings(deadline=None)  # the machine may be busy
 @given(st.floats(allow_nan=False, allow_infinity=False, width=32), st.sampled_from(sorted(COMMON_UNITS)))
 def test_a_written_number_comes_back_times_its_unit(number: float, unit: str) -> None:
     measured = read_measured(f"{number!r} {unit}")
@@ -215,6 +217,7 @@ def test_settings_hold_si_floats_and_survive_json() -> None:
     assert Settings.model_validate_json(settings.model_dump_json()) == settings
 
 
+@settings(deadline=None)  # the machine may be busy
 @given(st.floats(allow_nan=False, allow_infinity=False), st.sampled_from(["", " %", " m", " rad/s", " m^5/s^2"]))
 def test_a_quantity_of_any_dimension_survives_json_bit_for_bit(number: float, unit: str) -> None:
     settings = Settings(within=f"{number!r}{unit}", value=number)  # type: ignore[arg-type]

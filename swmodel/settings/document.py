@@ -5,6 +5,7 @@ from __future__ import annotations
 import copy
 import datetime
 import json
+import math
 import os
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
@@ -60,7 +61,7 @@ class Document:
 
     def placed(self, faults: Sequence[Fault]) -> list[Fault]:
         """Return faults with file and line, in the order of the file."""
-        return sorted((self._placed(fault) for fault in faults), key=lambda fault: fault.line or 0)
+        return sorted((self._placed(fault) for fault in faults), key=lambda fault: fault.line or math.inf)
 
     def _placed(self, fault: Fault) -> Fault:
         for key, origin in reversed(self.outside):
