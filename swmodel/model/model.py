@@ -142,11 +142,11 @@ class Model:
         """Take so many steps, in blocks, each looked at."""
         while steps > 0:
             block = min(steps, STEPS_A_BLOCK)
-            kept = self.state.sets.copy()
+            kept = self._kept()
             before = self.state.steps, self._first
             self._advance(block)
             if self._least_thickness() <= 0:
-                self.state.sets[...] = kept
+                self.state.sets[: len(kept)] = kept
                 self.state.steps, self._first = before
                 self._to_the_last_good_step(block)
             steps -= block
@@ -238,6 +238,10 @@ class Model:
         self._first = False
         self._set_time()
 
+    def _kept(self) -> Array:
+        """Copy of every level that the next step depends on."""
+        return self.state.sets[: 3 * self._levels].copy()
+
     def _set_time(self) -> None:
         origin_steps, origin_time = self._origin
         self.state.time = origin_time + (self.state.steps - origin_steps) * self.dt
@@ -255,12 +259,12 @@ class Model:
     def _to_the_last_good_step(self, steps: int) -> None:
         """Take single steps from a good state up to the last good one, then say what comes after it."""
         for _ in range(steps):
-            kept = self.state.sets.copy()
+            kept = self._kept()
             before = self.state.steps, self._first
             self._advance(1)
             if self._least_thickness() <= 0:
                 error = self._unphysical()
-                self.state.sets[...] = kept
+                self.state.sets[: len(kept)] = kept
                 self.state.steps, self._first = before
                 self._set_time()
                 raise error
