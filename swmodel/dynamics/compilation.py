@@ -8,9 +8,6 @@ So the cache folder is named by a hash of the kernel sources: an edit never meet
 from __future__ import annotations
 
 import hashlib
-import logging
-import os
-import tempfile
 from pathlib import Path
 from typing import Any
 
@@ -18,7 +15,7 @@ import numba
 import numpy as np
 from numba import njit
 
-log = logging.getLogger(__name__)
+from .cache import cache_folder
 
 # contraction and reciprocals are allowed, reassociation is not: results must not depend on the band of rows
 FAST = {"contract", "arcp", "nsz"}
@@ -31,25 +28,6 @@ U8 = np.uint64
 ONE = np.uint64(1)
 
 KERNEL_FOLDERS = (Path(__file__).parent, Path(__file__).parent.parent / "diagnostics")
-
-
-def cache_folder() -> Path:
-    """Return the folder for compiled kernels and measured speeds.
-
-    ``$SWMODEL_CACHE``, else ``$XDG_CACHE_HOME/swmodel``, else ``~/.cache/swmodel``, else a temporary one (logged).
-    """
-    wanted = os.environ.get("SWMODEL_CACHE")
-    base = os.environ.get("XDG_CACHE_HOME") or os.path.expanduser("~/.cache")  # noqa: PTH111  (may have no home)
-    folder = Path(wanted) if wanted else Path(base) / "swmodel"
-    try:
-        folder.mkdir(parents=True, exist_ok=True)
-        with tempfile.TemporaryFile(dir=folder):
-            return folder
-    except OSError as error:
-        fallback = Path(tempfile.gettempdir()) / f"swmodel-{os.getuid() if hasattr(os, 'getuid') else 'cache'}"
-        fallback.mkdir(parents=True, exist_ok=True)
-        log.info("cache folder %s cannot be written (%s): using %s", folder, error, fallback)
-        return fallback
 
 
 def source_digest(folders: tuple[Path, ...] = KERNEL_FOLDERS) -> str:

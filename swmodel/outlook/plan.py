@@ -86,6 +86,78 @@ def make_basin(experiment: Experiment) -> Basin:
     return build_basin(grid, frame, experiment.layer)
 
 
+@dataclass(frozen=True)
+class Draft:
+    """As much of a plan as can be made, and all that stands against it.
+
+    Parameters
+    ----------
+    experiment : Experiment
+        The settings.
+    parts : sequence
+        The parts of the start.
+    pv_flux : PVFlux
+        The scheme of the Coriolis term.
+    basin, start, flow, step, output
+        As in `Plan`; None where it could not be made.
+    faults : tuple of Fault
+        What the run is refused for.
+    """
+
+    experiment: Experiment
+    parts: Sequence[Any]
+    pv_flux: PVFlux
+    basin: Basin | None = None
+    start: StartFields | None = None
+    flow: tuple[float, float] | None = None
+    step: StepChoice | None = None
+    output: ResolvedOutput | None = None
+    faults: tuple[Fault, ...] = ()
+
+    @property
+    def plan(self) -> Plan:
+        """The plan.
+
+        Raises
+        ------
+        RequestError
+            Where anything stands against it.
+        """
+        if self.faults or not (self.basin and self.start and self.flow and self.step and self.output):
+            raise RequestError(self.faults)
+        return Plan(self.experiment, self.basin, self.pv_flux, self.start, self.flow, self.step, self.output)
+
+
+def begin_draft(experiment: Experiment, *, start: Any = None, pv_flux: PVFlux | None = None) -> Draft:
+    """Name what is to be planned; nothing is computed yet. Arguments as for `make_plan`."""
+    parts: Sequence[Any] = experiment.start if start is None else start if isinstance(start, list | tuple) else [start]
+    return Draft(experiment, parts, pv_flux or PV_FLUXES[experiment.numerics.pv_flux])
+
+
+def draft_plan(draft: Draft, begun: Begun | None = None) -> Draft:
+    """Plan as far as that goes: what cannot be made is left out, and why is among the faults."""
+    experiment = draft.experiment
+    faults: list[Fault] = []
+    try:
+        basin = make_basin(experiment)
+        draft = replace(draft, basin=basin)
+        plain = PlainEquations(basin, draft.pv_flux, experiment.numerics.linear)
+        fields = build_start(draft.parts, basin, plain.tendency, Path.cwd())
+        faults += _thickness_faults(basin, fields)
+        flow = expected_flow(experiment, basin, fields)
+        draft = replace(draft, start=fields, flow=flow)
+        step = plan_step(experiment, basin, fields, flow, begun)
+        draft = replace(draft, step=step)
+        output = resolve_output(experiment.output, basin.grid, experiment.time.until, step.dt)
+    except RequestError as error:
+        return replace(draft, faults=(*faults, *error.faults))
+    if begun is not None:
+        output = replace(
+            output, steps_between_snapshots=begun.snapshots_every, steps_between_diagnostics=begun.diagnostics_every
+        )
+    return replace(draft, output=output, faults=tuple(faults))
+
+
 def make_plan(
     experiment: Experiment, *, start: Any = None, pv_flux: PVFlux | None = None, begun: Begun | None = None
 ) -> Plan:
@@ -105,22 +177,9 @@ def make_plan(
     Raises
     ------
     RequestError
-        Where the set-up cannot be run as written.
+        Where the set-up cannot be run as written, with all that stands against it.
     """
-    basin = make_basin(experiment)
-    flux = pv_flux or PV_FLUXES[experiment.numerics.pv_flux]
-    parts: Sequence[Any] = experiment.start if start is None else start if isinstance(start, list | tuple) else [start]
-    plain = PlainEquations(basin, flux, experiment.numerics.linear)
-    fields = build_start(parts, basin, plain.tendency, Path.cwd())
-    _check_thickness(basin, fields)
-    flow = expected_flow(experiment, basin, fields)
-    step = plan_step(experiment, basin, fields, flow, begun)
-    output = resolve_output(experiment.output, basin.grid, experiment.time.until, step.dt)
-    if begun is not None:
-        output = replace(
-            output, steps_between_snapshots=begun.snapshots_every, steps_between_diagnostics=begun.diagnostics_every
-        )
-    return Plan(experiment, basin, flux, fields, flow, step, output)
+    return draft_plan(begin_draft(experiment, start=start, pv_flux=pv_flux), begun).plan
 
 
 def expected_flow(experiment: Experiment, basin: Basin, start: StartFields) -> tuple[float, float]:
@@ -151,20 +210,21 @@ def plan_step(
     return choose_step(time, omega_max, advection, times, nice)
 
 
-def _check_thickness(basin: Basin, start: StartFields) -> None:
+def _thickness_faults(basin: Basin, start: StartFields) -> list[Fault]:
     """Refuse a start that leaves no fluid somewhere."""
     thickness = basin.depth_field + start.eta
-    if not (low := float(thickness.min())) > 0:
-        j, i = np.unravel_index(int(np.argmin(thickness)), thickness.shape)
-        grid = basin.grid
-        raise RequestError(
-            Fault(
-                ("start",),
-                f"the thickness at the start is {low:.4g} m at x = {grid.x[i]:.6g} m, y = {grid.y[j]:.6g} m",
-                "a thickness above 0 everywhere (there is no wetting and drying)",
-                "lower the amplitude or deepen the layer",
-            )
+    if (low := float(thickness.min())) > 0:
+        return []
+    j, i = np.unravel_index(int(np.argmin(thickness)), thickness.shape)
+    grid = basin.grid
+    return [
+        Fault(
+            ("start",),
+            f"the thickness at the start is {low:.4g} m at x = {grid.x[i]:.6g} m, y = {grid.y[j]:.6g} m",
+            "a thickness above 0 everywhere (there is no wetting and drying)",
+            "lower the amplitude or deepen the layer",
         )
+    ]
 
 
 def planned_times(plan: Plan, every: int) -> np.ndarray[Any, np.dtype[np.float64]]:
