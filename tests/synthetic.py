@@ -4,7 +4,10 @@ import numpy as np
 
 from swmodel.frame import FrameSettings, build_frame
 from swmodel.grid import Basin, Grid
-from swmodel.measures import MEASURES, Record
+from swmodel.measures import MEASURES, ExpectSettings, Record
+
+OF_ETA = {"kind": "amplitude", "of": "eta"}
+TURNING = {"kind": "frequency", "of": "velocity", "at": [0, 0]}
 
 HOUR = 3600.0
 DAY = 86400.0
@@ -42,3 +45,16 @@ def measure(kind, **keys):
 def told(one, record, period=None):
     """What would be refused before the run: keys and what was found."""
     return [(".".join(map(str, fault.key)), fault.found) for fault in one.faults(record, period)]
+
+
+def expect(**keys):
+    keys = {"claim": "It stays", "measure": OF_ETA, "value": "1 m", "within": "10 %", "because": "a test"} | keys
+    return ExpectSettings.model_validate(keys)
+
+
+def turning_record(basin=None, count=49):
+    basin = basin or make_basin()
+    f0 = basin.frame.f0
+    return make_record(
+        basin, np.arange(count) * HOUR, u=lambda x, y, t: 0.3 * np.cos(f0 * t), v=lambda x, y, t: -0.3 * np.sin(f0 * t)
+    )

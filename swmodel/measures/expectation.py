@@ -82,9 +82,7 @@ class ExpectSettings(Choice):
     claim: Annotated[str, Field(min_length=1, description="a sentence")]
     measure: AnyMeasure
     value: Value
-    within: Annotated[
-        Tolerance, Field(description="a percentage of the value, or a quantity of its dimension")
-    ]
+    within: Annotated[Tolerance, Field(description="a percentage of the value, or a quantity of its dimension")]
     because: Annotated[str, Field(min_length=1, description="why that tolerance")]
 
 
@@ -225,11 +223,11 @@ def _within_faults(within: Measured | Percentage, expected: Expected | None, uni
     if isinstance(within, Percentage):
         if expected is not None and expected.value == 0:
             wanted = f"{describe(unit)}, absolute" if unit else "an absolute tolerance"
-            return [Fault(("within",), f"{within} of an expected value of 0 is nothing", wanted)]
+            return [Fault(("within",), f"{within.percent:g} % of an expected value of 0 is nothing", wanted)]
     elif within.unit and unit and not same_dimension(within.unit, unit):
         return [Fault(("within",), f"{within} is {describe(within.unit)}", f"{describe(unit)}, or a percentage")]
     size = within.percent if isinstance(within, Percentage) else within.value
-    return [] if size > 0 else [Fault(("within",), f"{within} leaves no room", "a tolerance above 0")]
+    return [] if size > 0 else [Fault(("within",), f"a tolerance of {size:g} leaves no room", "a tolerance above 0")]
 
 
 def _named(expected: Expected) -> str:

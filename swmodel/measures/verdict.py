@@ -9,7 +9,7 @@ from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any, Literal
 
 from ..errors import CAUTION, RequestError
-from ..quantities import Percentage, format_quantity, same_dimension
+from ..quantities import Measured, Percentage, format_quantity, same_dimension
 from ..theory import THEORY
 from .expectation import Expected, ExpectSettings, expected_value, faults, tolerance, unit_of_measure
 from .finding import Finding
@@ -88,7 +88,7 @@ class Judgement:
                 "theory": expected.theory if expected else None,
             },
             "found": {"value": _number(finding.value), "unit": finding.unit},
-            "within": {"value": _number(self.within), "unit": unit, "given": str(within)},
+            "within": {"value": _number(self.within), "unit": unit, "given": _given(within)},
             "uncertainty": {"fit": _number(finding.fit_error), "grid": None, "physics": None},
             "verdict": self.word,
             "reason": self.reason or None,
@@ -256,6 +256,11 @@ def _number(value: float | None) -> float | None:
     return float(value) if value is not None and math.isfinite(value) else None
 
 
+def _given(within: Measured | Percentage) -> str:
+    """A tolerance as it was given."""
+    return f"{within.percent:g} %" if isinstance(within, Percentage) else str(within)
+
+
 def _measure_as_json(measure: Any) -> Any:
     """The measure as it was configured, or the name of a measure of one's own."""
     dump = getattr(measure, "model_dump", None)
@@ -293,7 +298,7 @@ def _cells(judgement: Judgement) -> tuple[str, str, str, str]:
     else:
         off = format_quantity(difference, expected.unit, 2)
     if isinstance(within, Percentage):
-        allowed = f"{within.percent:g} %"
+        allowed = _given(within)
     else:
         allowed = format_quantity(within.value, within.unit or (expected.unit if expected else ""), 3)
     return (
