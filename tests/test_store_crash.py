@@ -185,6 +185,24 @@ def test_an_index_opened_during_the_run_can_still_be_read_after_the_next_joining
     np.testing.assert_array_equal(reader.field("v", 0), trial.field(grid, "v", 0))
 
 
+def pieces_after(folder, count):
+    with trial.open_writer(folder, fields=("eta",)) as writer:
+        for k in range(count):
+            writer.write_snapshot(k * trial.STEP, trial.snapshot(trial.make_basin().grid, k, ("eta",)))
+    with h5py.File(folder / "snapshots.h5") as file:
+        return len(file["eta"].virtual_sources())
+
+
+def test_parts_are_joined_so_that_the_index_stays_short(tmp_path):
+    # in sixteens: 40 = 2 x 16 + 8
+    assert pieces_after(tmp_path / "run", 40) == 10
+
+
+def test_large_parts_are_left_apart(tmp_path, monkeypatch):
+    monkeypatch.setattr(parts, "TOGETHER_BYTES", 100_000)  # 16 parts of 21 kB are more
+    assert pieces_after(tmp_path / "run", 20) == 20
+
+
 def fill_until_refused(folder, count=400):
     """Write until the machine refuses; return how many snapshots were acknowledged, and the refusal."""
     basin = trial.make_basin(40, 40)

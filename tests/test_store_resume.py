@@ -131,8 +131,14 @@ def test_what_is_later_than_the_checkpoint_is_dropped_with_a_message(tmp_path):
     np.testing.assert_array_equal(run.series["mass"], np.arange(4))
 
 
-def test_a_run_that_had_ended_can_go_on(tmp_path):
+@pytest.mark.parametrize("hard_links", [True, False])
+def test_a_run_that_had_ended_can_go_on(tmp_path, monkeypatch, hard_links):
+    def refuse(*words):
+        raise OSError(errno.EPERM, "no hard links here")
+
     write(tmp_path / "run", 7)
+    if not hard_links:
+        monkeypatch.setattr(os, "link", refuse)
     assert not (tmp_path / "run" / "parts").exists()
     write(tmp_path / "run", 12, resume=True, provenance=trial.make_provenance(time={"until": 7200.0}))
     assert trial.faults_of(tmp_path / "run", GRID, 12, 4) == []
@@ -290,6 +296,9 @@ def test_snapshots_follow_each_other_in_time_and_have_the_shape_of_the_grid(tmp_
         with pytest.raises(ValueError, match=r"v has shape \(4, 6\), not \(5, 6\)"):
             writer.write_snapshot(120.0, trial.snapshot(GRID, 2) | {"v": np.zeros((4, 6))})
         writer.write_diagnostics(0.0, {"mass": 1.0})
+        with pytest.raises(ValueError, match=r"a row at 0\.0 s is not later than the one before, 0\.0 s"):
+            writer.write_diagnostics(0.0, {"mass": 1.0})
+        assert (writer.last_snapshot, writer.last_row) == (60.0, 0.0)
         with pytest.raises(ValueError, match="these differ: energy_budget/pressure, mass"):
             writer.write_diagnostics(60.0, {}, {"energy_budget": {"pressure": 1.0}})
     assert len(Run(tmp_path / "run").fields) == 1

@@ -223,9 +223,9 @@ class Layout:
         """Write one plane past HDF5's own filters, which are slower than the disk."""
         rows = self.bands(location, dataset.dtype.itemsize)
         for first in range(0, plane.shape[0], rows):
-            band = np.full((rows, plane.shape[1]), np.nan, dataset.dtype)
-            inside = plane[first : first + rows]
-            band[: inside.shape[0]] = inside
+            band = np.ascontiguousarray(plane[first : first + rows], dataset.dtype)
+            if len(band) < rows:  # the last chunk reaches beyond the plane
+                band = np.pad(band, ((0, rows - len(band)), (0, 0)), constant_values=np.nan)
             dataset.id.write_direct_chunk((*lead, first, 0), packed(band) if self.compression else band.tobytes())
 
 

@@ -106,6 +106,16 @@ class RunWriter:
             self._close()
             raise
 
+    @property
+    def last_snapshot(self) -> float | None:
+        """Time of the last snapshot that is stored, s; None where there is none."""
+        return self._snapshots.times[-1] if self._snapshots.times else None
+
+    @property
+    def last_row(self) -> float | None:
+        """Time of the last row of the time series, s; None where there is none."""
+        return self._series.times[-1] if self._series.times else None
+
     def write_snapshot(self, time: float, fields: Mapping[str, NDArray[Any]]) -> None:
         """Store the fields of one time; on return they will survive anything.
 
@@ -121,9 +131,7 @@ class RunWriter:
         MachineError
             Where it cannot be written.
         """
-        times = self._snapshots.times
-        if times and not time > times[-1]:
-            raise ValueError(f"a snapshot at {time} s is not later than the one before, {times[-1]} s")
+        _check_later("snapshot", time, self.last_snapshot)
         self._snapshots.append(time, {name: self._cut(name, fields[name]) for name in self._output.fields})
 
     def write_diagnostics(
@@ -145,6 +153,7 @@ class RunWriter:
         MachineError
             Where it cannot be written.
         """
+        _check_later("row", time, self.last_row)
         self._series.append(time, values, groups or {})
 
     def write_checkpoint(self, checkpoint: Checkpoint) -> None:
@@ -241,6 +250,11 @@ def free_folder(runs: Path, name: str) -> Path:
         number += 1
         folder = runs / f"{name}-{number}"
     return folder
+
+
+def _check_later(what: str, time: float, before: float | None) -> None:
+    if before is not None and not time > before:
+        raise ValueError(f"a {what} at {time} s is not later than the one before, {before} s")
 
 
 def _read_settings(folder: Path) -> dict[str, Any]:
