@@ -27,14 +27,15 @@ row_jit = njit(forceinline=True, **OPTIONS)
 U8 = np.uint64
 ONE = np.uint64(1)
 
-KERNEL_FOLDERS = (Path(__file__).parent, Path(__file__).parent.parent / "diagnostics")
+PACKAGE = Path(__file__).parent.parent
+KERNEL_SOURCES = ("dynamics/*.py", "diagnostics/*.py", "grid/domain.py")  # the last for the widths of the halo
 
 
-def source_digest(folders: tuple[Path, ...] = KERNEL_FOLDERS) -> str:
+def source_digest(package: Path = PACKAGE) -> str:
     """Digest of every kernel source and of the versions that compile it."""
     digest = hashlib.sha256(f"{numba.__version__} {np.__version__}".encode())
-    for folder in folders:
-        for path in sorted(folder.glob("*.py")):
+    for pattern in KERNEL_SOURCES:
+        for path in sorted(package.glob(pattern)):
             digest.update(path.name.encode() + path.read_bytes())
     return digest.hexdigest()[:16]
 
