@@ -7,8 +7,9 @@ rest is scanned and then refined. A fit on a part of the data starts from the wh
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -65,6 +66,16 @@ def turning_basis(t: Array, omega: float) -> Values:
     return np.column_stack([np.ones_like(t), t, np.exp(1j * omega * t)])
 
 
+def _oscillation_slope(t: Array, omega: float) -> Array:
+    """Derivative of `oscillation_basis` with omega."""
+    return np.column_stack([0 * t, 0 * t, -t * np.sin(omega * t), t * np.cos(omega * t)])
+
+
+def _turning_slope(t: Array, omega: float) -> Values:
+    """Derivative of `turning_basis` with omega."""
+    return np.column_stack([0 * t, 0 * t, 1j * t * np.exp(1j * omega * t)])
+
+
 def fit_oscillation(t: Array, values: Values, near: float | None = None, within: float = math.inf) -> Fit:
     """Fit an oscillation with mean and trend: a cosine to real values, exp(i omega t) to complex ones.
 
@@ -91,7 +102,7 @@ def fit_oscillation(t: Array, values: Values, near: float | None = None, within:
     """
     t = t - t.mean()
     turning = np.iscomplexobj(values)
-    basis = turning_basis if turning else oscillation_basis
+    basis, slope = (turning_basis, _turning_slope) if turning else (oscillation_basis, _oscillation_slope)
     window = float(t[-1] - t[0])
     rest = remainder(np.column_stack([np.ones_like(t), t]), values)
     variance = float(np.sum(np.abs(rest) ** 2))
@@ -102,12 +113,14 @@ def fit_oscillation(t: Array, values: Values, near: float | None = None, within:
     if near is None:
         near, within = _scan_oscillation(t, rest, turning, lowest, highest)
     floor = -highest if turning else lowest
-    omega = _refine(
-        lambda parameters: remainder(basis(t, parameters[0]), values) / math.sqrt(variance),
+    (omega,) = _refine(
+        partial(basis, t),
+        lambda omega: [slope(t, omega)],
+        values,
         (near,),
         ((max(near - within, floor), min(near + within, highest)),),
         (2 * math.pi / window,),
-    )[0]
+    )
     left = float(np.sum(np.abs(remainder(basis(t, omega), values)) ** 2))
     return Fit((omega,), 1 - left / variance)
 
@@ -183,19 +196,21 @@ def fit_exponential(s: Array, values: Array, offset: float | None = None, near: 
     span = float(s[-1] - s[0])
     shortest, longest = span / (s.size - 1) / 4, 100 * span
 
+    def basis(log_length: float) -> Array:
+        return exponential_basis(s, math.exp(log_length), fixed)
+
+    def slopes(log_length: float) -> list[Array]:
+        slope = np.zeros_like(basis(log_length))
+        slope[:, -1] = (s - s[0]) / math.exp(log_length) * basis(log_length)[:, -1]
+        return [slope]
+
     def left(log_length: float) -> float:
-        return float(np.sum(remainder(exponential_basis(s, math.exp(log_length), fixed), values) ** 2))
+        return float(np.sum(remainder(basis(log_length), values) ** 2))
 
     trials = np.linspace(math.log(shortest), math.log(longest), 200)
     start = float(trials[int(np.argmin([left(trial) for trial in trials]))]) if near is None else math.log(near)
-    best = _refine(
-        lambda parameters: (
-            remainder(exponential_basis(s, math.exp(parameters[0]), fixed), values) / math.sqrt(variance)
-        ),
-        (start,),
-        ((float(trials[0]), float(trials[-1])),),
-        (1.0,),
-    )[0]
+
+    (best,) = _refine(basis, slopes, values, (start,), ((float(trials[0]), float(trials[-1])),), (1.0,))
     if best > trials[-2]:
         raise NoAnswerError("the profile does not fall off exponentially: the best curve is a straight line")
     if best < math.log(2 * shortest):
@@ -208,8 +223,16 @@ def fit_exponential(s: Array, values: Array, offset: float | None = None, near: 
 
 def wave_basis(s: Array, t: Array, k: float, omega: float) -> Array:
     """A constant and the two quadratures of k s - omega t, ``[n_t n_s, 3]``."""
-    phase = (k * s[None, :] - omega * t[:, None]).ravel()
-    return np.column_stack([np.ones_like(phase), np.cos(phase), np.sin(phase)])
+    turns = np.exp(1j * omega * t).conj()[:, None] * np.exp(1j * k * s)
+    return np.column_stack([np.ones(turns.size), turns.real.ravel(), turns.imag.ravel()])
+
+
+def _wave_slopes(s: Array, t: Array, k: float, omega: float) -> list[Array]:
+    """Derivatives of `wave_basis` with k and with omega."""
+    columns = wave_basis(s, t, k, omega)
+    along_s, along_t = np.broadcast_arrays(s[None, :], t[:, None])
+    turned = np.column_stack([np.zeros(len(columns)), -columns[:, 2], columns[:, 1]])
+    return [turned * along_s.reshape(-1, 1), -turned * along_t.reshape(-1, 1)]
 
 
 def fit_wave(t: Array, s: Array, values: Array, near: tuple[float, float] | None = None) -> Fit:
@@ -242,15 +265,12 @@ def fit_wave(t: Array, s: Array, values: Array, near: tuple[float, float] | None
         raise NoAnswerError("the line is the same at every snapshot and place: no wave travels there")
     scales = 2 * math.pi / float(s[-1] - s[0]), 2 * math.pi / float(t[-1] - t[0])
     start = _scan_wave(t, s, values - values.mean()) if near is None else near
-    k, omega = _refine(
-        lambda parameters: remainder(wave_basis(s, t, *parameters), values.ravel()) / math.sqrt(variance),
-        start,
-        (
-            (max(start[0] - scales[0], 0.05 * scales[0]), start[0] + scales[0]),
-            (start[1] - scales[1], start[1] + scales[1]),
-        ),
-        scales,
+    bounds = (
+        (max(start[0] - scales[0], 0.05 * scales[0]), start[0] + scales[0]),
+        (start[1] - scales[1], start[1] + scales[1]),
     )
+
+    k, omega = _refine(partial(wave_basis, s, t), partial(_wave_slopes, s, t), values.ravel(), start, bounds, scales)
     left = float(np.sum(remainder(wave_basis(s, t, k, omega), values.ravel()) ** 2))
     return Fit((k, omega), 1 - left / variance)
 
@@ -271,22 +291,48 @@ def _scan_wave(t: Array, s: Array, rest: Array) -> tuple[float, float]:
 
 
 def _refine(
-    left: Callable[[tuple[float, ...]], Values],
+    basis: Callable[..., Values],
+    slopes: Callable[..., Sequence[Values]],
+    values: Values,
     start: tuple[float, ...],
     bounds: tuple[tuple[float, float], ...],
     scales: tuple[float, ...],
 ) -> tuple[float, ...]:
-    """Refine the parameters to round-off; `left` returns the normalised remainder, real or complex."""
+    """Refine parameters to round-off.
+
+    Parameters
+    ----------
+    basis : callable
+        The parameters to the columns ``[n, m]`` of which the values are a linear combination.
+    slopes : callable
+        The parameters to the derivatives of those columns with each parameter.
+    values : ndarray ``[n]``
+        Real or complex.
+    start, bounds, scales : tuple
+        First guess, limits, and natural size of a change of each parameter.
+
+    Notes
+    -----
+    The derivative of the remainder is Kaufman's (1975, BIT 15): its gradient is exact.
+    """
     from scipy.optimize import least_squares
 
-    scale = np.array(scales)
+    scale, origin = np.array(scales), np.array(start)
+    size = math.sqrt(float(np.sum(np.abs(values - values.mean()) ** 2)))
 
-    def function(steps: Array) -> Array:
-        rest = left(tuple(float(one) for one in np.array(start) + steps * scale)).ravel()
-        return np.concatenate([rest.real, rest.imag]) if np.iscomplexobj(rest) else rest
+    def real(array: Values) -> Array:
+        return np.concatenate([array.real, array.imag]) if np.iscomplexobj(array) else array
 
-    low = (np.array([low for low, _ in bounds]) - np.array(start)) / scale
-    high = (np.array([high for _, high in bounds]) - np.array(start)) / scale
+    def left(steps: Array) -> Array:
+        return real(remainder(basis(*(origin + steps * scale)), values) / size)
+
+    def slope(steps: Array) -> Array:
+        columns = basis(*(origin + steps * scale))
+        weights, *_ = np.linalg.lstsq(columns, values, rcond=None)
+        changes = [remainder(columns, one @ weights) for one in slopes(*(origin + steps * scale))]
+        return np.column_stack([-real(change) * one / size for change, one in zip(changes, scales, strict=True)])
+
+    low, high = ((np.array(limit) - origin) / scale for limit in zip(*bounds, strict=True))
     first = np.clip(0.0, low + 1e-9, high - 1e-9)
-    result = least_squares(function, first, bounds=(low, high), jac="3-point", xtol=1e-14, ftol=1e-14, gtol=1e-14)
-    return tuple(float(one) for one in np.array(start) + result.x * scale)
+    result = least_squares(left, first, slope, bounds=(low, high), xtol=1e-14, ftol=1e-14, gtol=1e-14)
+    return tuple(float(one) for one in origin + result.x * scale)
