@@ -88,7 +88,7 @@ def planned(names=("eta", "u", "v"), **more):
         ]),
         ("decay_length", {"of": "eta", "along": "x", "offset": "1 m/s"}, [("offset", "the offset is a speed")]),
         ("decay_length", {"of": "eta", "along": "x", "offset": "1 cm"}, []),
-        ("frequency", {"of": "eta", "at": [0, 0], "during": [0, "8 h"]}, [("during", "9 snapshots lie in the window")]),
+        ("frequency", {"of": "eta", "at": [0, 0], "during": [0, "8 h"]}, [("during", "snapshots in the window: 9")]),
         ("phase_speed", {"of": "u", "along": "y", "from_": "1 km", "to": "2 km"}, [
             ("to", "2 points of u between the ends of the line")
         ]),

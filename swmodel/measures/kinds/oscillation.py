@@ -161,7 +161,7 @@ class PhaseSpeed(Measure):
 
 
 def _few(count: int) -> str:
-    return f"{count} snapshots lie in the window; it takes at least {FEWEST_SNAPSHOTS}"
+    return f"snapshots in the window: {count}; it takes at least {FEWEST_SNAPSHOTS}"
 
 
 def _wave_window_faults(
@@ -176,7 +176,7 @@ def _wave_window_faults(
     if times.size < FEWEST_SNAPSHOTS:
         yield Fault(
             ("during",),
-            f"{times.size} snapshots lie in the window",
+            f"snapshots in the window: {times.size}",
             f"at least {FEWEST_SNAPSHOTS}",
             "a longer window, or store more often",
         )
