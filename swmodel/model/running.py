@@ -14,7 +14,7 @@ from types import FrameType
 from typing import TYPE_CHECKING, Any
 
 from ..errors import RequestError, SolutionError, StopRequested
-from ..measures import ExpectSettings, Record, Verdict
+from ..measures import ExpectSettings, Record, Verdict, faults
 from ..measures import judge as judge_record
 from ..outlook import Outlook, check
 from ..outlook.plan import Begun, Plan, make_basin, make_plan, run_folder_name
@@ -181,10 +181,19 @@ def judge(run: Run | str | Path, expectations: Sequence[ExpectSettings] | None =
     -------
     Verdict
         holds, fails or undecided, each with its reasons.
+
+    Raises
+    ------
+    RequestError
+        Where the run does not hold what other expectations ask for. What the run's own cannot be given is undecided.
     """
     held = run if isinstance(run, Run) else Run(run)
     experiment = Experiment.from_json(held.settings)
     record = Record.from_run(held, make_basin(experiment), experiment.numerics.linear)
+    if expectations is not None:
+        wrong = [fault for n, one in enumerate(expectations) for fault in faults(one, n, record, experiment.start)]
+        if wrong:
+            raise RequestError(wrong)
     verdict = judge_record(
         experiment.expect if expectations is None else expectations,
         record,
