@@ -7,12 +7,15 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+import pytest
 from numpy.typing import NDArray
+from pydantic import TypeAdapter
 
 from swmodel.dynamics.reference import tendency
+from swmodel.errors import Fault, RequestError
 from swmodel.frame import Frame
 from swmodel.grid import Basin, Grid
-from swmodel.state import StartFields, build_start
+from swmodel.state import StartFields, StartSettings, build_start
 
 Array = NDArray[np.float64]
 P, W = "periodic", "wall"
@@ -94,3 +97,15 @@ def vorticity_inside(u: Array, v: Array, grid: Grid) -> Array:
 def largest(*fields: Array) -> float:
     """Largest magnitude."""
     return max(float(np.abs(field).max()) for field in fields)
+
+
+def read(kind: str, **keys: Any) -> Any:
+    """Read a start as a configuration has it."""
+    return TypeAdapter(StartSettings).validate_python({"kind": kind, **keys})
+
+
+def refusal(basin: Basin, *parts: Any) -> list[Fault]:
+    """Return the faults for which a start is refused."""
+    with pytest.raises(RequestError) as refused:
+        start(basin, *parts)
+    return refused.value.faults

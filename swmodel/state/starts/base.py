@@ -214,7 +214,9 @@ class SurfaceStart(Start):
 
 def image_remarks(kind: str, pattern: Laid, steepest: float, *, mean_kept: bool) -> list[str]:
     """Say where the images that a periodic direction brings would change a speed by over 1 % of the largest."""
-    remarks = []
+    remarks: list[str] = []
+    if steepest == 0:  # one cell along: nothing flows
+        return remarks
     for direction, slope in pattern.neighbours.items():
         if slope > IMAGE_CAUTION * steepest:
             remarks.append(
@@ -252,5 +254,5 @@ def _largest(*fields: Array) -> float:
 
 
 def percent(share: float) -> str:
-    """Write a share in per cent with two digits."""
-    return f"{100 * share:.2g} %"
+    """Write a share in per cent, with two digits below 10 %."""
+    return f"{100 * share:.2g} %" if share < 0.1 else f"{100 * share:.0f} %"

@@ -169,7 +169,8 @@ def load_state(file: Path, names: tuple[str, str, str], time: float | None, reme
 def on_grid(stored: Stored, grid: Grid, location: Location, file: str) -> Array:
     """Return a stored field at the points of a location: as it is where it fits, else by linear interpolation.
 
-    In a periodic direction the file goes round; at walls the outermost values hold for half a spacing more.
+    In a periodic direction the file goes round. At walls the outermost values hold for half a spacing more, and the
+    velocity through them goes to 0.
 
     Parameters
     ----------
@@ -212,8 +213,14 @@ def on_grid(stored: Stored, grid: Grid, location: Location, file: str) -> Array:
     ):
         return stored.values
     values = stored.values
-    xs, values = _reach(stored.x, values, 1, grid.Lx if grid.periodic_x else None)
-    ys, values = _reach(stored.y, values, 0, grid.Ly if grid.periodic_y else None)
+    if grid.periodic_x:
+        xs, values = _round(stored.x, values, 1, grid.Lx)
+    else:
+        xs, values = _to_walls(stored.x, values, 1, grid.x_face if location == "u" else None)
+    if grid.periodic_y:
+        ys, values = _round(stored.y, values, 0, grid.Ly)
+    else:
+        ys, values = _to_walls(stored.y, values, 0, grid.y_face if location == "v" else None)
     faults = [
         Fault(
             (name,),
@@ -229,22 +236,40 @@ def on_grid(stored: Stored, grid: Grid, location: Location, file: str) -> Array:
     return _linear(xs, ys, values, *wanted)
 
 
-def _reach(own: Array, values: Array, axis: int, period: float | None) -> tuple[Array, Array]:
-    """Return coordinates rising, and values, carried on beyond both ends: round a period, or half a spacing level."""
+def _rising(own: Array, values: Array, axis: int) -> tuple[Array, Array]:
+    """Return coordinates in rising order, and the values with them."""
     order = np.argsort(own)
-    own, values = own[order], np.take(values, order, axis)
-    if own.size == 1 and period is None:
-        return own, values
-    if period is None:
-        first, last = own[0] - (own[1] - own[0]) / 2, own[-1] + (own[-1] - own[-2]) / 2
-        return np.concatenate(([first], own, [last])), np.take(values, [0, *range(own.size), own.size - 1], axis)
-    slack = 1e-9 * period
-    once = own < own[0] + period - slack  # the last may repeat the first
+    return own[order], np.take(values, order, axis)
+
+
+def _round(own: Array, values: Array, axis: int, period: float) -> tuple[Array, Array]:
+    """Return coordinates and values carried on round a period, where the file holds a whole one."""
+    own, values = _rising(own, values, axis)
+    once = own < own[0] + period * (1 - 1e-9)  # the last may repeat the first
     own, values = own[once], np.compress(once, values, axis)
     widest = float(np.max(np.diff(own), initial=0.0)) or period
-    if own[0] + period - own[-1] > 2 * widest:  # the gap at the seam is no spacing: the file is no whole period
+    if own[0] + period - own[-1] > 1.5 * widest:  # what is left at the seam is no spacing
         return own, values
     return np.concatenate((own - period, own, own + period)), np.concatenate((values,) * 3, axis)
+
+
+def _to_walls(own: Array, values: Array, axis: int, shut: Array | None) -> tuple[Array, Array]:
+    """Return coordinates and values carried on by half a spacing: level, or where walls are `shut` to 0 on them."""
+    own, values = _rising(own, values, axis)
+    if own.size == 1:
+        return own, values
+    first, last = own[0] - (own[1] - own[0]) / 2, own[-1] + (own[-1] - own[-2]) / 2
+    ends = np.take(values, [0, -1], axis)
+    if shut is not None:
+        slack = 1e-9 * (last - first)
+        if own[0] > shut[0] >= first - slack:
+            first = shut[0]
+            ends[(slice(None), 0) if axis else 0] = 0.0
+        if own[-1] < shut[-1] <= last + slack:
+            last = shut[-1]
+            ends[(slice(None), 1) if axis else 1] = 0.0
+    low, high = np.split(ends, 2, axis)
+    return np.concatenate(([first], own, [last])), np.concatenate((low, values, high), axis)
 
 
 def _linear(xs: Array, ys: Array, values: Array, x: Array, y: Array) -> Array:
