@@ -146,7 +146,7 @@ def draft_plan(draft: Draft, begun: Begun | None = None) -> Draft:
         faults += _thickness_faults(basin, fields)
         flow = expected_flow(experiment, basin, fields)
         draft = replace(draft, start=fields, flow=flow)
-        step = plan_step(experiment, basin, fields, flow, begun)
+        step = plan_step(experiment, basin, draft.pv_flux, fields, flow, begun)
         draft = replace(draft, step=step)
         output = resolve_output(experiment.output, basin.grid, experiment.time.until, step.dt)
     except RequestError as error:
@@ -194,7 +194,12 @@ def expected_flow(experiment: Experiment, basin: Basin, start: StartFields) -> t
 
 
 def plan_step(
-    experiment: Experiment, basin: Basin, start: StartFields, flow: tuple[float, float], begun: Begun | None = None
+    experiment: Experiment,
+    basin: Basin,
+    pv_flux: PVFlux,
+    start: StartFields,
+    flow: tuple[float, float],
+    begun: Begun | None = None,
 ) -> StepChoice:
     """Choose the step of an experiment, or take that of a run that goes on."""
     grid, time, output = basin.grid, experiment.time, experiment.output
@@ -203,7 +208,7 @@ def plan_step(
     times = {"time.until": time.until}
     times |= {f"output.{key}": every for key in ("every", "diagnostics_every") if (every := getattr(output, key))}
     nice = None if "output.every" in times else time.until / SNAPSHOTS_BY_DEFAULT
-    omega_max = largest_frequency(basin, thickest)
+    omega_max = largest_frequency(basin, thickest, pv_flux)
     if begun is not None:
         limit = time.margin * stability_limit(time.stepper, time.filter, time.williams) / (omega_max + advection)
         return StepChoice(begun.step, limit, omega_max, advection, time.until, given=time.step != "auto")

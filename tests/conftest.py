@@ -1,0 +1,13 @@
+"""What all tests share.
+
+Compiled kernels are kept in the cache folder of whoever runs the tests (`swmodel.dynamics.cache`): all workers share
+it, and a second run compiles nothing.
+"""
+
+from __future__ import annotations
+
+from hypothesis import settings
+
+# a first example may compile for some 15 s; the same examples every time, so that a green suite stays green
+settings.register_profile("suite", deadline=None, derandomize=True)
+settings.load_profile("suite")
