@@ -64,10 +64,10 @@ def iterated_frequency(basin: Basin, thickest: float, pv_flux: PVFlux) -> float:
     square = LinearOperator((size, size), matvec=lambda x: -apply(apply(np.ravel(x))), dtype=np.float64)
     start = apply(np.random.default_rng(0).standard_normal(size))
     if pv_flux.conserves_energy:
-        largest = eigsh(square, k=1, which="LA", tol=TOLERANCE, v0=start, return_eigenvectors=False)
+        largest = float(eigsh(square, k=1, which="LA", tol=TOLERANCE, v0=start, return_eigenvectors=False)[0])
     else:
-        largest = eigs(square, k=1, which="LR", tol=TOLERANCE, v0=start, return_eigenvectors=False)
-    return float(np.sqrt(np.complex128(largest[0])).real)
+        largest = float(eigs(square, k=1, which="LR", tol=TOLERANCE, v0=start, return_eigenvectors=False)[0].real)
+    return math.sqrt(max(largest, 0.0))
 
 
 def _scaled_operator(basin: Basin, depth: Vector, pv_flux: PVFlux) -> tuple[Callable[[Vector], Vector], int]:
