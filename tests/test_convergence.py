@@ -1,4 +1,4 @@
-"""Observed order in space and time on a smooth nonlinear flow over uneven depth, toward a solution found another way."""
+"""Observed order in space and time on a smooth nonlinear flow over uneven depth, toward an independent solution."""
 
 from __future__ import annotations
 
@@ -46,7 +46,7 @@ def spectral_solution(n: int = 40, steps: int = 100):
     """
     x, y = np.arange(n)[None, :] * LX / n, np.arange(n)[:, None] * LY / n
     k = 2j * np.pi * np.fft.fftfreq(n, LX / n)[None, :]
-    l = 2j * np.pi * np.fft.fftfreq(n, LY / n)[:, None]
+    m = 2j * np.pi * np.fft.fftfreq(n, LY / n)[:, None]
     H, f = depth(x, y), coriolis(x, y)
 
     def slope(a, number):
@@ -57,9 +57,9 @@ def spectral_solution(n: int = 40, steps: int = 100):
         h = H + eta
         return np.array(
             [
-                f * v - u * slope(u, k) - v * slope(u, l) - GRAVITY * slope(eta, k),
-                -f * u - u * slope(v, k) - v * slope(v, l) - GRAVITY * slope(eta, l),
-                -slope(h * u, k) - slope(h * v, l),
+                f * v - u * slope(u, k) - v * slope(u, m) - GRAVITY * slope(eta, k),
+                -f * u - u * slope(v, k) - v * slope(v, m) - GRAVITY * slope(eta, m),
+                -slope(h * u, k) - slope(h * v, m),
             ]
         )
 
