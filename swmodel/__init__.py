@@ -16,6 +16,8 @@ from __future__ import annotations
 import importlib
 from typing import TYPE_CHECKING, Any
 
+from . import errors
+
 if TYPE_CHECKING:
     from .errors import MachineError, RequestError, SolutionError, SwmodelError
     from .measures import Verdict
@@ -24,7 +26,7 @@ if TYPE_CHECKING:
     from .settings import Experiment, read
     from .store.reading import Run
 
-__version__ = "0.1.0"
+__version__ = errors.VERSION
 
 __all__ = [
     "Experiment",

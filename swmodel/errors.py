@@ -14,6 +14,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from dataclasses import dataclass, replace
 
+VERSION = "0.1.0"
 CAUTION = (
     "Research prototype: not for navigation, coastal-hazard or tsunami warning, or engineering design; "
     "for those the responsible authority and licensed practice decide."

@@ -7,7 +7,7 @@ import sys
 from collections.abc import Sequence
 from typing import NoReturn
 
-from ..errors import CAUTION, SwmodelError
+from ..errors import CAUTION, VERSION, SwmodelError
 
 PROGRAM = "swmodel"
 DESCRIPTION = """\
@@ -37,8 +37,6 @@ class _Parser(argparse.ArgumentParser):
 
 def build_parser() -> argparse.ArgumentParser:
     """Return the parser of the whole command line."""
-    from .. import __version__
-
     parser = _Parser(
         prog=PROGRAM,
         description=DESCRIPTION,
@@ -46,7 +44,7 @@ def build_parser() -> argparse.ArgumentParser:
         formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
-    parser.add_argument("--version", action="version", version=f"{PROGRAM} {__version__}")
+    parser.add_argument("--version", action="version", version=f"{PROGRAM} {VERSION}")
     commands = parser.add_subparsers(dest="command", metavar="COMMAND", required=True, parser_class=_Parser)
 
     def command(name: str) -> argparse.ArgumentParser:

@@ -6,7 +6,7 @@ import sys
 import time as clock
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from ..quantities import format_quantity
 
@@ -57,7 +57,8 @@ def _bar(title: str) -> Iterator[Callable[[Progress], None]]:
         begun: list[float] = []
 
         def report(progress: Progress) -> None:
-            bar.update(task, completed=progress.time / progress.until, **_words(progress, begun))
+            fields: dict[str, Any] = {**_words(progress, begun)}
+            bar.update(task, completed=progress.time / progress.until, **fields)
 
         yield report
 

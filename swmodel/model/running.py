@@ -17,7 +17,9 @@ from ..errors import RequestError, SolutionError, StopRequested
 from ..measures import ExpectSettings, Record, Verdict, faults
 from ..measures import judge as judge_record
 from ..outlook import Outlook, check
+from ..outlook.cost import remember_run
 from ..outlook.plan import Begun, Plan, make_basin, make_plan, run_folder_name
+from ..outlook.speeds import measure_speed
 from ..quantities import TIME, format_quantity, read_quantity
 from ..settings import Experiment
 from ..store.checkpoints import read_checkpoint
@@ -110,10 +112,17 @@ def run(
     with RunWriter(
         folder, plan.basin, provenance=provenance, output=plan.output, epoch=experiment.time.start
     ) as writer:
+        begun = clock.monotonic()
         model = Model(experiment, plan=plan)
         for caution in outlook.cautions:
             log.info("caution: %s", caution)
+        _log_beginning(model)
         _Course(model, plan, writer, progress).follow()
+        seconds = clock.monotonic() - begun
+        log.info("ended after %.3g s of wall clock", seconds)
+    if outlook.cost is not None:
+        measure_speed(model.equations, experiment.time)
+        remember_run(outlook.cost, seconds, float(plan.basin.grid.nx * plan.basin.grid.ny * plan.steps))
     judge(folder)
     return Run(folder)
 
@@ -162,6 +171,7 @@ def resume(
         assert writer.checkpoint is not None
         model.restore(writer.checkpoint)
         log.info("goes on from %s", format_quantity(model.time, "s"))
+        _log_beginning(model)
         _Course(model, plan, writer, progress).follow()
     judge(Path(folder))
     return Run(folder)
@@ -204,6 +214,20 @@ def judge(run: Run | str | Path, expectations: Sequence[ExpectSettings] | None =
     if expectations is None:
         write_json(held.folder / VERDICT, verdict.as_json())
     return verdict
+
+
+def _log_beginning(model: Model) -> None:
+    """Say what is about to be run."""
+    grid, plan = model.basin.grid, model.plan
+    log.info(
+        "%d x %d cells, %d steps of %.10g s to %s, %d threads",
+        grid.nx,
+        grid.ny,
+        plan.steps,
+        plan.step.dt,
+        format_quantity(plan.experiment.time.until, "s"),
+        model.equations.bands,
+    )
 
 
 def _extended(experiment: Experiment, dt: float, until: str | float) -> Experiment:

@@ -37,7 +37,7 @@ SECONDS_A_SIDE = 0.05
 KEPT = 200  # runs a machine
 COMPARED = 10  # past runs, those nearest in length
 
-# of an ssprk3 step, and of double precision: speed.md's trials, for kernels that were not measured here
+# of an ssprk3 step, and of double precision: trials on two machines, for kernels not measured here
 STEPPER_WORK = {"ssprk3": 1.0, "rk4": 1.43, "leapfrog": 0.77}
 PRECISION_WORK = {"double": 1.0, "single": 0.57}
 

@@ -12,7 +12,9 @@ from dataclasses import dataclass, field
 from pathlib import Path, PureWindowsPath
 from typing import Any
 
-PACKAGES = ("swmodel", "numpy", "numba", "scipy", "h5py")
+from ..errors import VERSION
+
+PACKAGES = ("numpy", "numba", "scipy", "h5py")
 
 # what may differ when a run is resumed: it changes no number already stored
 MAY_CHANGE = (("time", "until"), ("numerics", "threads"), ("output", "checkpoint_every"))
@@ -101,7 +103,7 @@ def _name_only(text: str) -> str:
 
 def package_versions() -> dict[str, str]:
     """Return the versions of the interpreter and of the packages that take part."""
-    versions = {"python": platform.python_version()}
+    versions = {"python": platform.python_version(), "swmodel": VERSION}
     for name in PACKAGES:
         try:
             versions[name] = importlib.metadata.version(name)

@@ -1,4 +1,4 @@
-"""Nanoseconds per cell and step of the fused kernels, beside the NumPy twin in the same run; compile and start-up times.
+"""Nanoseconds per cell and step of the fused kernels, beside the NumPy twin in one run; compile and start-up times.
 
     python tests/benchmarks/first_figures.py
 
