@@ -40,12 +40,18 @@ def largest_frequency(basin: Basin, thickest: float, pv_flux: PVFlux) -> float:
     grid = basin.grid
     f_max = float(np.abs(basin.f).max())
     bound = math.sqrt(max(f_max**2, 4 * basin.gravity * thickest * (1 / grid.dx**2 + 1 / grid.dy**2)))
-    fine = f_max * max(grid.dx, grid.dy) <= math.sqrt(basin.gravity * thickest)
-    uniform = basin.even and bool(np.all(basin.f == basin.f.flat[0]))
-    if fine or uniform:
+    if not needs_iteration(basin, thickest):
         return bound
     # a domain of one closed cell has no wave at all
     return max(f_max, SAFETY * iterated_frequency(basin, thickest, pv_flux))
+
+
+def needs_iteration(basin: Basin, thickest: float) -> bool:
+    """Whether the largest frequency has no closed form: uneven depth or f on cells that are coarse against c/|f|."""
+    grid = basin.grid
+    fine = float(np.abs(basin.f).max()) * max(grid.dx, grid.dy) <= math.sqrt(basin.gravity * thickest)
+    uniform = basin.even and bool(np.all(basin.f == basin.f.flat[0]))
+    return not (fine or uniform)
 
 
 def iterated_frequency(basin: Basin, thickest: float, pv_flux: PVFlux) -> float:
