@@ -7,6 +7,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from pathlib import Path
 
+from ..dynamics.frequency import needs_iteration
 from ..errors import Fault
 from ..grid import GridSettings
 from ..grid.domain import HALO_Y, row_stride
@@ -17,18 +18,20 @@ from .plan import Plan
 from .speeds import Kernel, Speeds, read_speeds, remember
 from .tables import BYTES, Row, Table, written
 
-# doubles a cell, the most that are held at once: traced while planning (balanced starts need most) and running
-PLANNING_DOUBLES = 34
-RUNNING_DOUBLES = 22
-PROGRAM_BYTES = 250e6  # Python, its libraries and the compiled kernels
+# the most that is held at once, traced and weighed on 512 x 512 and 1024 x 1024 cells: doubles a cell
+PLANNING_DOUBLES = 50  # balanced starts need most
+ITERATION_DOUBLES = 75  # beside it, where the largest frequency is found by iteration: 20 vectors of three fields
+RUNNING_DOUBLES = 12  # the plan, and what is derived for a snapshot
+LIBRARY_BYTES = 60e6
+COMPILED_BYTES = 150e6  # the compiler and its kernels
 SNAPSHOT_BYTES = 6_000  # a snapshot's share of names, chunk tables and its place in the index
 CHECKPOINTS_AT_ONCE = 3  # two are kept while the next is written
 LEAST_COMPRESSED = 0.5  # of the plain size: shuffle and gzip save no more on a flow that fills the domain
 
 START_SECONDS = 1.0  # imports, kernels from the cache, files
-SECONDS_A_VALUE = 15e-9  # storing: derive, pack, write
+SECONDS_A_VALUE = 40e-9  # storing: derive, pack, write
 SECONDS_A_SNAPSHOT = 0.01  # files that must reach the disk
-STEPS_A_DIAGNOSTIC = 8  # sums, and the energy budget that takes a step apart
+STEPS_A_DIAGNOSTIC = 7  # sums, and the energy budget that takes a step apart
 
 
 @dataclass(frozen=True)
@@ -137,15 +140,26 @@ def memory_faults(needed: float, available: float | None) -> list[Fault]:
     ]
 
 
-def memory_needed(grid: GridSettings, stepper: str) -> float:
-    """Bytes that planning and running hold at most, from the settings alone: before a large array is made."""
+def memory_needed(grid: GridSettings, stepper: str, *, iterated: bool = False) -> float:
+    """Bytes that planning and running hold at most, from the settings alone: before a large array is made.
+
+    Parameters
+    ----------
+    grid : GridSettings
+        Cells and precision.
+    stepper : str
+        Name in `STEPPERS`.
+    iterated : bool
+        Whether the largest frequency is found by iteration.
+    """
     nx, ny = grid.cells
     size = 8 if grid.precision == "double" else 4
-    padded = (ny + 2 * HALO_Y) * row_stride(nx, size)
-    # state and its copy, coefficients, the energy budget's own sets; beside the plan in double precision
-    sets = 2 * (1 + STEPPERS[stepper].levels) + 4
-    running = (3 * sets + 2) * padded * size + RUNNING_DOUBLES * 8 * nx * ny
-    return PROGRAM_BYTES + max(PLANNING_DOUBLES * 8 * nx * ny, running)
+    padded = (ny + 2 * HALO_Y) * row_stride(nx, size) * size
+    # state and its copy, the energy budget's own sets, coefficients
+    fields = 3 * (2 * (1 + STEPPERS[stepper].levels) + 4) + 2
+    running = COMPILED_BYTES + fields * padded + RUNNING_DOUBLES * 8 * nx * ny
+    planning = (PLANNING_DOUBLES + ITERATION_DOUBLES * iterated) * 8 * nx * ny
+    return LIBRARY_BYTES + max(planning, running)
 
 
 def reckon(plan: Plan, folder: Path) -> Cost:
@@ -159,6 +173,7 @@ def reckon(plan: Plan, folder: Path) -> Cost:
         Where the run will be written.
     """
     experiment, output, grid = plan.experiment, plan.output, plan.basin.grid
+    deepest = float(plan.basin.depth_field.max())
     kernel = Kernel.of(
         plan.basin,
         plan.pv_flux,
@@ -183,7 +198,7 @@ def reckon(plan: Plan, folder: Path) -> Cost:
     seconds, note = estimate(work, speeds)
     return Cost(
         work=work,
-        memory=memory_needed(experiment.grid, experiment.time.stepper),
+        memory=memory_needed(experiment.grid, experiment.time.stepper, iterated=needs_iteration(plan.basin, deepest)),
         memory_available=available_memory(),
         disk=2 * plain + rows + checkpoints,  # at the end all snapshots are joined, and then the parts removed
         disk_least=least,

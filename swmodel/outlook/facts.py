@@ -17,12 +17,14 @@ from ..grid import Basin, Grid
 from ..state import StartFields
 from ..theory import THEORY
 from .plan import Draft
+from .tables import named
 
 if TYPE_CHECKING:
     from ..settings import Experiment
 
 Direction = Literal["x", "y"]
 DIRECTIONS: tuple[Direction, Direction] = ("x", "y")
+NEGLIGIBLE = 1e-9  # of g eta/dx and f u: an imbalance that small is round-off and the balance's own tolerance
 UNIFORM = 1e-6  # of the largest value: what varies by less varies by round-off, and by the balance's own tolerance
 
 
@@ -38,11 +40,14 @@ class Wave:
         omega, rad/s, positive.
     grid_ratio : float or None
         Frequency on the C-grid over that in the continuum, where theory knows it.
+    part : int or None
+        Number of the part of the start that it is.
     """
 
     name: str
     frequency: float
     grid_ratio: float | None = None
+    part: int | None = None
 
 
 @dataclass(frozen=True)
@@ -164,6 +169,24 @@ class Facts:
             fields += [(self.start.u, speed), (self.start.v, speed), (self.start.eta, speed / slope)]
         return any(float(np.ptp(field, axis=axis).max()) > UNIFORM * size for field, size in fields)
 
+    @cached_property
+    def imbalance(self) -> dict[Direction, NDArray[np.float64]]:
+        """How far the start is from geostrophic balance along each direction, m s-2 summed over the other.
+
+        This is what sends out waves. It is taken at centres, over two cells: good to tell where they begin.
+        """
+        start, basin, grid = self.start, self.basin, self.grid
+        if start is None:
+            return {"x": np.zeros(grid.nx), "y": np.zeros(grid.ny)}
+        u, v = (start.u[:, 1:] + start.u[:, :-1]) / 2, (start.v[1:] + start.v[:-1]) / 2
+        f = (basin.f[1:, 1:] + basin.f[:-1, :-1]) / 2
+        slope_x = basin.gravity * _slope(start.eta, 1, grid.dx, periodic=grid.periodic_x)
+        slope_y = basin.gravity * _slope(start.eta, 0, grid.dy, periodic=grid.periodic_y)
+        size = np.hypot(f * v - slope_x, f * u + slope_y)
+        largest = max(float(np.abs(part).max()) for part in (slope_x, slope_y, f * u, f * v))
+        size[size < NEGLIGIBLE * largest] = 0.0
+        return {"x": size.sum(axis=0), "y": size.sum(axis=1)}
+
     def size(self, direction: Direction) -> float:
         """Extent of the domain along a direction, m."""
         return self.grid.Lx if direction == "x" else self.grid.Ly
@@ -202,13 +225,13 @@ class Facts:
             omega = row.value(known)
         except RequestError:
             return
-        name = f"{family.replace('_', '-')} wave, start.{number}"
+        name = f"{named(family)} wave, start.{number}"
         try:
             on_grid = row.value({**known, "dx": self.grid.dx, "dy": self.grid.dy, "on_grid": True})
         except RequestError:
-            yield Wave(name, omega)
+            yield Wave(name, omega, None, number)
         else:
-            yield Wave(name, omega, on_grid / omega)
+            yield Wave(name, omega, on_grid / omega, number)
 
     @property
     def only_waves(self) -> bool:
@@ -222,3 +245,9 @@ class Facts:
         return bool(moving) and all(
             getattr(part, "wave", "") or getattr(part, "balance", "none") != "none" for part in moving
         )
+
+
+def _slope(eta: NDArray[np.float64], axis: int, spacing: float, *, periodic: bool) -> NDArray[np.float64]:
+    if periodic:
+        return (np.roll(eta, -1, axis) - np.roll(eta, 1, axis)) / (2 * spacing)
+    return np.gradient(eta, spacing, axis=axis) if eta.shape[axis] > 1 else np.zeros_like(eta)

@@ -48,8 +48,8 @@ def _rows(facts: Facts) -> Iterator[Row]:
     for wave in facts.waves:
         if wave.grid_ratio is not None:
             share = f"{100 * (wave.grid_ratio - 1):+.2g} %"
-            key = f"grid_error_of_{wave.name.split(' wave')[0].replace('-', '_')}_frequency"
-            yield Row(key, wave.grid_ratio - 1, "", f"{wave.name}; exact on this grid", shown=share)
+            note = f"of the frequency of the {wave.name}"
+            yield Row(f"grid_error_of_start_{wave.part}", wave.grid_ratio - 1, "", note, shown=share)
     if grid.precision == "single" and facts.draft.step is not None:
         steps = round(facts.until / facts.draft.step.dt)
         note = f"relative, after {steps} steps, if roundings add up"

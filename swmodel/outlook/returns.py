@@ -11,26 +11,9 @@ from numpy.typing import NDArray
 from .facts import Direction, Facts
 
 WITHIN = (0.05, 0.95)  # of what sends out waves lies between these shares of its sum along a direction
-NEGLIGIBLE = 1e-9  # of g eta/dx and f u: an imbalance that small is round-off and the balance's own tolerance
 
 Array = NDArray[np.float64]
 Span = tuple[float, float]
-
-
-def imbalance(facts: Facts) -> Array:
-    """Size of the start's departure from geostrophic balance at centres, m s-2, ``[ny, nx]``: what sends out waves.
-
-    Not a number of the model's own: one-sided and two-cell differences, good to tell where the waves begin.
-    """
-    start, basin, grid = facts.start, facts.basin, facts.grid
-    assert start is not None
-    u, v = (start.u[:, 1:] + start.u[:, :-1]) / 2, (start.v[1:] + start.v[:-1]) / 2
-    f = (basin.f[1:, 1:] + basin.f[:-1, :-1]) / 2
-    slope_x = basin.gravity * _slope(start.eta, 1, grid.dx, periodic=grid.periodic_x)
-    slope_y = basin.gravity * _slope(start.eta, 0, grid.dy, periodic=grid.periodic_y)
-    size = np.hypot(f * v - slope_x, f * u + slope_y)
-    largest = max(float(np.abs(part).max()) for part in (slope_x, slope_y, f * u, f * v))
-    return np.where(size > NEGLIGIBLE * largest, size, 0.0)
 
 
 def source(facts: Facts, direction: Direction) -> Span:
@@ -38,9 +21,7 @@ def source(facts: Facts, direction: Direction) -> Span:
     grid = facts.grid
     faces = grid.x_face if direction == "x" else grid.y_face
     middle = float(faces[0] + faces[-1]) / 2
-    if facts.start is None:
-        return middle, middle
-    profile = imbalance(facts).sum(axis=0 if direction == "x" else 1)
+    profile = facts.imbalance[direction]
     if not profile.any():
         return middle, middle
     share = np.concatenate(([0.0], np.cumsum(profile) / profile.sum()))
@@ -100,12 +81,6 @@ def window_end(measure: Any, until: float) -> float:
     if during is None:
         return until
     return float(during[1]) if isinstance(during, tuple) else float(during)
-
-
-def _slope(eta: Array, axis: int, spacing: float, *, periodic: bool) -> Array:
-    if periodic:
-        return (np.roll(eta, -1, axis) - np.roll(eta, 1, axis)) / (2 * spacing)
-    return np.gradient(eta, spacing, axis=axis) if eta.shape[axis] > 1 else np.zeros_like(eta)
 
 
 def _image(distance: float, period: float) -> float:

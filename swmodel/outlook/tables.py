@@ -40,7 +40,7 @@ class Row:
     @property
     def name(self) -> str:
         """Its name as it is printed."""
-        return " ".join(word.capitalize() if word in PEOPLE else word for word in self.key.split("_"))
+        return named(self.key)
 
     @property
     def text(self) -> str:
@@ -70,6 +70,11 @@ class Table:
     def as_json(self) -> dict[str, Any]:
         """Return the rows by key."""
         return {row.key: row.as_json() for row in self.rows}
+
+
+def named(key: str) -> str:
+    """Write words joined by ``_`` apart, names of people with a capital."""
+    return " ".join(word.capitalize() if word in PEOPLE else word for word in key.split("_"))
 
 
 def written(value: float | str | None, unit: str) -> str:

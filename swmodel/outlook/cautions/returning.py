@@ -29,7 +29,7 @@ def waves_return(facts: Facts) -> Iterator[Caution]:
             ways.append(f"{way} within {time}")
     if not ways:
         return
-    why = f"at {format_quantity(facts.fastest_wave, 'm/s')} they {listed(ways)}, the run lasts "
+    why = f"at {format_quantity(facts.fastest_wave, 'm/s')} they {listed(ways)}, while the run lasts "
     why += format_quantity(facts.until, "s")
     if facts.balanced:
         why += ", though a balanced start sends out few"
