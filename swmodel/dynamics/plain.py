@@ -28,8 +28,8 @@ class PlainEquations:
     pv_flux: PVFlux
     linear: bool = False
 
-    def tendency(self, u: Any, v: Any, eta: Any, linear: bool | None = None) -> tuple[Any, Any, Any]:
-        """Rates of change of u, v, eta, all with both ends; `linear` as the run itself unless said otherwise.
+    def tendency(self, u: Any, v: Any, eta: Any, linear: bool = False) -> tuple[Any, Any, Any]:
+        """Rates of change of u, v, eta, all with both ends: by the run's own equations, or by their linear part.
 
         Returns
         -------
@@ -49,5 +49,5 @@ class PlainEquations:
             edges=(grid.west, grid.east, grid.south, grid.north),
             slip=grid.slip,
             pv_flux=self.pv_flux.plain,
-            linear=self.linear if linear is None else linear,
+            linear=self.linear or linear,
         )
