@@ -1,6 +1,7 @@
 """Conserved quantities and extremes, one row of sums at a time, so that they depend on no number of threads.
 
-Compiled: at the default interval the plain NumPy sums would cost as much as the run. `plain_sums` is the twin.
+Compiled: at the default interval the plain NumPy sums would cost as much as the run. `plain_sums` is the twin. On one
+thread: sums cost less than a step, and a parallel loop would take twice as long to compile.
 All sums are in double precision, whatever the run's.
 """
 
@@ -10,7 +11,7 @@ import math
 from typing import Any
 
 import numpy as np
-from numba import njit, prange
+from numba import njit
 from numpy.typing import NDArray
 
 from ..dynamics.compilation import ONE, OPTIONS, U8, row_jit
@@ -103,13 +104,13 @@ def row_of_corners(out, u, us, v, eta, etas, depth, depths, f, linear, rx, ry, w
     out[PV_MAX] = pv_max
 
 
-@njit(parallel=True, cache=True, **OPTIONS)
+@njit(cache=True, **OPTIONS)
 def row_sums(y, m):
     """Sums and extremes of every row of the set `y`, ``[ny + 1, COLUMNS]``; the last row has corners alone."""
     out = np.zeros((m.ny + 1, COLUMNS))
     rx = float(m.rx)
     ry = float(m.ry)
-    for j in prange(m.ny + 1):
+    for j in range(m.ny + 1):
         r = j + H
         if j < m.ny:
             row_of_cells(
@@ -128,11 +129,11 @@ def row_sums(y, m):
     return out
 
 
-@njit(parallel=True, cache=True, **OPTIONS)
+@njit(cache=True, **OPTIONS)
 def row_health(y, m):
     """Least thickness of every row, ``[ny]``; minus infinity where a value is not finite."""
     out = np.zeros(m.ny)
-    for j in prange(m.ny):
+    for j in range(m.ny):
         r = j + H
         least = math.inf
         for i in range(W, m.nx + W):
