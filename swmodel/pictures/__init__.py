@@ -16,13 +16,13 @@ from pathlib import Path
 
 from ..choices import did_you_mean
 from ..errors import Fault, RequestError
-from .energy import energy
-from .expectation import expectation
-from .fieldmap import field_map
+from .energy import energy_drawings
+from .expectation import expectation_drawings
+from .fieldmap import map_drawings
 from .page import our_style, write_image
 from .scene import Drawing, NoPictureError, Scene, short_caution
-from .section import section
-from .timedistance import time_distance
+from .section import section_drawings
+from .timedistance import time_distance_drawings
 
 __all__ = ["FIGURES", "Picture", "draw"]
 
@@ -50,27 +50,27 @@ class Picture:
 
 FIGURES: dict[str, Picture] = {
     "map": Picture(
-        field_map,
+        map_drawings,
         "elevation in colour and velocity as arrows, at the start and at the end",
         "common practice",
     ),
     "time_distance": Picture(
-        time_distance,
+        time_distance_drawings,
         "elevation against time along a line: which way signals go, and how fast",
         "Hovmöller 1949, Tellus 1",
     ),
     "section": Picture(
-        section,
+        section_drawings,
         "elevation and velocity along a line, at the start and settled, with theory on top",
         "common practice; theory of the step from Rossby 1938, J. Mar. Res. 1",
     ),
     "energy": Picture(
-        energy,
+        energy_drawings,
         "kinetic and potential energy against time, their drift, and how the budget closes",
         "common practice",
     ),
     "expectation": Picture(
-        expectation,
+        expectation_drawings,
         "for each expectation its points, the fit, the same curve with the expected value, and the verdict",
         "common practice",
     ),

@@ -24,7 +24,7 @@ BUDGET = "energy_budget"
 TERMS = {"time_stepping": ("time stepping", FOUND), "filter": ("filter", OTHER), "residual": ("residual", FIT)}
 
 
-def energy(scene: Scene) -> list[Drawing]:
+def energy_drawings(scene: Scene) -> list[Drawing]:
     """Kinetic and potential energy against time, with the drift of their sum and the residual of the budget."""
     return [Drawing("energy", partial(_paint, scene))]
 

@@ -12,7 +12,7 @@ import numpy as np
 from ..quantities import Percentage
 from .colours import BAND, EXPECTED, FIT, FOUND, INK, OTHER
 from .page import INSIDE, Page, wrapped
-from .rulers import Unit, number, padded, set_axis, unit_for, with_sign, written
+from .rulers import Unit, padded, set_axis, unit_for, with_sign, written
 from .scene import Array, Drawing, Scene
 
 if TYPE_CHECKING:
@@ -28,7 +28,7 @@ MANY_POINTS = 150
 MOST_DIGITS, DIGITS = 6, 4  # at most, and where the measure's own error is not known
 
 
-def expectation(scene: Scene) -> list[Drawing]:
+def expectation_drawings(scene: Scene) -> list[Drawing]:
     """One figure an expectation: points, fit, the same curve with the expected value, and where the verdict lies."""
     judged = scene.verdict.expectations
     return [Drawing(f"expectation-{n}", partial(_paint, scene, judgement)) for n, judgement in enumerate(judged, 1)]
@@ -46,11 +46,14 @@ class _Writing:
         Digits after the point.
     error : float or None
         The measure's own error, SI; None where it is not known.
+    si : str
+        SI unit.
     """
 
     unit: Unit
     decimals: int
     error: float | None
+    si: str
 
     @classmethod
     def of(cls, judgement: Judgement) -> _Writing:
@@ -68,7 +71,7 @@ class _Writing:
             decimals = min(wanted, MOST_DIGITS - before)
         else:
             decimals = (DIGITS if error is None else MOST_DIGITS) - before
-        return cls(unit, max(0, decimals), error)
+        return cls(unit, max(0, decimals), error, finding.unit)
 
     def value(self, value: float) -> str:
         """Write a value."""
@@ -80,7 +83,9 @@ class _Writing:
             return self.value(value)
         size = self.error / self.unit.size
         error = f"{size:.{self.decimals}f}"
-        numbers = f"{self._number(value)} ± {error if float(error) else number(size)}"
+        if size and not float(error):
+            return f"{self.value(value)} ± {written(self.error, self.si, 2)}"
+        numbers = f"{self._number(value)} ± {error if size else 0}"
         return self.unit.after(f"({numbers})" if self.unit.name.startswith("10") else numbers)
 
     def _number(self, value: float) -> str:

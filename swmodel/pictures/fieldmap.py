@@ -13,7 +13,7 @@ from .colours import FAINT, INK, signed_map
 from .page import INSIDE, Page
 from .rulers import Unit, edges_note, mark_edges, number, round_up, set_axis, tick_step, unit_for, written
 from .scene import Array, Drawing, Scene, largest
-from .timedistance import time_distance
+from .timedistance import time_distance_drawings
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -32,10 +32,10 @@ LEAST_ARROW = 0.03  # of the largest speed: shorter arrows are left out
 OWN_SCALE = 4.0  # times smaller: the panel gets a scale of its own
 
 
-def field_map(scene: Scene) -> list[Drawing]:
+def map_drawings(scene: Scene) -> list[Drawing]:
     """Map of eta with velocity; where only few cells lie across the domain, its time-distance diagram."""
     if scene.thin is not None:
-        return time_distance(scene)
+        return time_distance_drawings(scene)
     return [Drawing("map", partial(_paint, scene))]
 
 

@@ -8,6 +8,7 @@ import re
 import warnings
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
+from functools import lru_cache
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -152,26 +153,33 @@ def wrapped(text: str, size: float, weight: str = "normal", width: float = INSID
     width : float
         Inches.
     """
+    blank = word_width("x x", size, weight) - 2 * word_width("x", size, weight)
+    lines: list[str] = []
+    room = 0.0  # left on the last line
+    for word in re.findall(r"[^ \t\r\n]+", text):  # a no-break space holds its words together
+        needed = blank + word_width(word, size, weight)
+        if needed <= room:
+            lines[-1] += f" {word}"
+            room -= needed
+            continue
+        while word_width(word, size, weight) > width and len(word) > 1:
+            cut = next(n for n in range(len(word) - 1, 0, -1) if n == 1 or word_width(word[:n], size, weight) <= width)
+            lines.append(word[:cut])
+            word = word[cut:]
+        lines.append(word)
+        room = width - word_width(word, size, weight)
+    return lines
+
+
+@lru_cache(maxsize=4096)  # the last lines of all figures of a run are the same
+def word_width(word: str, size: float, weight: str) -> float:
+    """Measure a word as it will be drawn, inches."""
     from matplotlib.backends.backend_agg import RendererAgg
     from matplotlib.font_manager import FontProperties
 
     renderer: Any = RendererAgg(1, 1, DPI)  # type: ignore[no-untyped-call]
     face = FontProperties(family=STYLE["font.sans-serif"], size=size, weight=weight)
-
-    def fits(line: str) -> bool:
-        return bool(renderer.get_text_width_height_descent(line, face, False)[0] <= width * DPI)
-
-    lines: list[str] = []
-    for word in re.findall(r"[^ \t\r\n]+", text):  # a no-break space holds its words together
-        if lines and fits(f"{lines[-1]} {word}"):
-            lines[-1] += f" {word}"
-            continue
-        while not fits(word):
-            cut = next(n for n in range(len(word) - 1, 0, -1) if n == 1 or fits(word[:n]))
-            lines.append(word[:cut])
-            word = word[cut:]
-        lines.append(word)
-    return lines
+    return float(renderer.get_text_width_height_descent(word, face, False)[0]) / DPI
 
 
 def write_image(path: Path, image: bytes) -> None:

@@ -123,7 +123,7 @@ def number(value: float, digits: int = 2) -> str:
     mantissa, power = f"{value:.{digits - 1}e}".split("e")
     if -3 <= int(power) < 6:
         return with_sign(f"{float(f'{value:.{digits}g}'):.10g}")
-    return with_sign(f"{mantissa}·{power_of_ten(int(power))}")
+    return with_sign(f"{float(mantissa):g}·{power_of_ten(int(power))}")
 
 
 def with_sign(text: str) -> str:

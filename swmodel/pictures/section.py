@@ -25,7 +25,7 @@ SMALL = 0.1  # of the depth: theory is for small steps
 DASHED = (0, (4, 2.2))
 
 
-def section(scene: Scene) -> list[Drawing]:
+def section_drawings(scene: Scene) -> list[Drawing]:
     """Profile of eta and of the velocity across it along a line, with theory on top where there is one."""
     return [Drawing("section", partial(_paint, scene))]
 
@@ -78,9 +78,11 @@ def _paint(scene: Scene) -> Page:
     for n, name in enumerate(panels):
         height = LOW if n else TALL
         axes = page.axes(LEFT, KEY + n * (TALL + GAP), width, height)
-        unit = _curves(axes, scene, cut, name)
+        theory = np.zeros(0)
         if step is not None:
             theory = step.elevation(scene, s) if name == "eta" else step.velocity(scene, s, cut)
+        unit = _curves(axes, scene, cut, name, theory)
+        if step is not None:
             label = f"theory: end state of the step, a = {written(scene.basin.deformation_radius, 'm')}"
             axes.plot(s / length.size, theory / unit.size, color=EXPECTED, linestyle=DASHED, linewidth=1.2, label=label)
         elif name == "eta":
@@ -96,15 +98,15 @@ def _paint(scene: Scene) -> Page:
     return page
 
 
-def _curves(axes: Axes, scene: Scene, cut: Cut, name: str) -> Unit:
-    """Draw the start and what became of it; return the unit of the axis."""
+def _curves(axes: Axes, scene: Scene, cut: Cut, name: str, theory: Array) -> Unit:
+    """Draw the start and what became of it; return the unit of the axis, which suits theory, too."""
     length = unit_for(cut.ends(scene), "m")
     at = cut.points(scene, name) / length.size
     start = cut.lines(scene, name, np.array([0]))[0]
     settled = cut.settled(scene, name)
-    unit = unit_for([*start, *settled], "m" if name == "eta" else "m/s")
+    unit = unit_for([*start, *settled, *theory], "m" if name == "eta" else "m/s")
     axes.axhline(0, color=ZERO, linewidth=0.5)
-    axes.plot(at, start / unit.size, color=START, linewidth=3.2, solid_joinstyle="miter", label="start")
+    axes.plot(at, start / unit.size, color=START, linewidth=2.6, solid_joinstyle="miter", label="start")
     if scene.times.size > 1:
         axes.plot(at, settled / unit.size, color=FOUND, label=cut.when(scene))
     return unit
@@ -157,7 +159,7 @@ def _headline(scene: Scene, cut: Cut, step: _Step | None) -> str:
     at = cut.points(scene, "eta")
     if step is None:
         change = largest(cut.settled(scene, "eta") - cut.lines(scene, "eta", np.array([0]))[0])
-        return f"Elevation {cut.where} departs by up to {written(change, 'm', 2)} from its start ({cut.when(scene)})"
+        return f"Elevation {cut.where} departs by up to {written(change, 'm', 2)} from its start"
     near = np.abs(at - step.at) < COMPARED * scene.basin.deformation_radius
     gap = largest((cut.settled(scene, "eta") - step.elevation(scene, at))[near]) / abs(step.eta0)
     return (

@@ -25,7 +25,7 @@ LABELS = {"eta": "elevation η", "u": "u, along x", "v": "v, along y"}
 UNITS = {"eta": "m", "u": "m/s", "v": "m/s"}
 
 
-def time_distance(scene: Scene) -> list[Drawing]:
+def time_distance_drawings(scene: Scene) -> list[Drawing]:
     """Time-distance diagram along the section's line: eta, and in a thin domain u and v beside it."""
     return [Drawing("time_distance", partial(_paint, scene))]
 
