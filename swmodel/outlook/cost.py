@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import statistics
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import Any
 
 from ..dynamics.frequency import needs_iteration
 from ..errors import Fault
@@ -19,8 +20,9 @@ from .speeds import Kernel, Speeds, read_speeds, remember
 from .tables import BYTES, Row, Table, written
 
 # the most that is held at once, traced and weighed on 512 x 512 and 1024 x 1024 cells: doubles a cell
-PLANNING_DOUBLES = 50  # balanced starts need most
-ITERATION_DOUBLES = 75  # beside it, where the largest frequency is found by iteration: 20 vectors of three fields
+PLANNING_DOUBLES = 20
+BALANCE_DOUBLES = 30  # beside it, where a start is balanced
+ITERATION_DOUBLES = 105  # beside it, where the largest frequency is found by iteration: 20 vectors of three fields
 RUNNING_DOUBLES = 12  # the plan, and what is derived for a snapshot
 LIBRARY_BYTES = 60e6
 COMPILED_BYTES = 150e6  # the compiler and its kernels
@@ -135,12 +137,12 @@ def memory_faults(needed: float, available: float | None) -> list[Fault]:
             ("grid", "cells"),
             f"the run takes {written(needed, BYTES)} of memory",
             f"{written(available, BYTES)} are available",
-            'fewer cells, or precision = "single"',
+            "fewer cells",
         )
     ]
 
 
-def memory_needed(grid: GridSettings, stepper: str, *, iterated: bool = False) -> float:
+def memory_needed(grid: GridSettings, stepper: str, *, balanced: bool, iterated: bool = False) -> float:
     """Bytes that planning and running hold at most, from the settings alone: before a large array is made.
 
     Parameters
@@ -149,6 +151,8 @@ def memory_needed(grid: GridSettings, stepper: str, *, iterated: bool = False) -
         Cells and precision.
     stepper : str
         Name in `STEPPERS`.
+    balanced : bool
+        Whether a part of the start is balanced.
     iterated : bool
         Whether the largest frequency is found by iteration.
     """
@@ -158,11 +162,16 @@ def memory_needed(grid: GridSettings, stepper: str, *, iterated: bool = False) -
     # state and its copy, the energy budget's own sets, coefficients
     fields = 3 * (2 * (1 + STEPPERS[stepper].levels) + 4) + 2
     running = COMPILED_BYTES + fields * padded + RUNNING_DOUBLES * 8 * nx * ny
-    planning = (PLANNING_DOUBLES + ITERATION_DOUBLES * iterated) * 8 * nx * ny
+    planning = (PLANNING_DOUBLES + max(BALANCE_DOUBLES * balanced, ITERATION_DOUBLES * iterated)) * 8 * nx * ny
     return LIBRARY_BYTES + max(planning, running)
 
 
-def reckon(plan: Plan, folder: Path) -> Cost:
+def is_balanced(parts: Sequence[Any]) -> bool:
+    """Whether a part of the start is balanced."""
+    return any(getattr(part, "balance", "none") != "none" for part in parts)
+
+
+def reckon(plan: Plan, folder: Path, *, balanced: bool = False) -> Cost:
     """Reckon what a planned run costs.
 
     Parameters
@@ -171,6 +180,8 @@ def reckon(plan: Plan, folder: Path) -> Cost:
         The plan.
     folder : Path
         Where the run will be written.
+    balanced : bool
+        Whether a part of its start is balanced.
     """
     experiment, output, grid = plan.experiment, plan.output, plan.basin.grid
     deepest = float(plan.basin.depth_field.max())
@@ -198,7 +209,12 @@ def reckon(plan: Plan, folder: Path) -> Cost:
     seconds, note = estimate(work, speeds)
     return Cost(
         work=work,
-        memory=memory_needed(experiment.grid, experiment.time.stepper, iterated=needs_iteration(plan.basin, deepest)),
+        memory=memory_needed(
+            experiment.grid,
+            experiment.time.stepper,
+            balanced=balanced,
+            iterated=needs_iteration(plan.basin, deepest),
+        ),
         memory_available=available_memory(),
         disk=2 * plain + rows + checkpoints,  # at the end all snapshots are joined, and then the parts removed
         disk_least=least,

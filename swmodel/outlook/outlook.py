@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Any
 
 from ..errors import CAUTION, Fault, RequestError
 from .cautions import Caution, gather
-from .cost import Cost, memory_faults, memory_needed, reckon
+from .cost import Cost, is_balanced, memory_faults, memory_needed, reckon
 from .expectations import Prospect, expectation_faults, prospects
 from .facts import Facts
 from .machine import available_memory
@@ -121,14 +121,16 @@ def check(
         With everything it is refused for, and every caution.
     """
     draft = begin_draft(experiment, start=start, pv_flux=pv_flux)
-    refusals = memory_faults(memory_needed(experiment.grid, experiment.time.stepper), available_memory())
+    balanced = is_balanced(draft.parts)
+    needed = memory_needed(experiment.grid, experiment.time.stepper, balanced=balanced)
+    refusals = memory_faults(needed, available_memory())
     if refusals:  # no large array is made
         return _outlook(draft, refusals)
     draft = draft_plan(draft)
     refusals += draft.faults
     cost = None
     if not draft.faults:
-        cost = reckon(draft.plan, Path(into) if into is not None else RUNS)
+        cost = reckon(draft.plan, Path(into) if into is not None else RUNS, balanced=balanced)
         refusals += [fault for fault in cost.faults() if fault not in refusals]
     if draft.basin is not None:
         refusals += [fault for fault in expectation_faults(draft, draft.basin) if fault not in refusals]

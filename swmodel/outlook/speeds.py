@@ -145,15 +145,26 @@ class Speeds:
         return [run.seconds / run.reckoned for run in near]
 
 
+NOTHING = Speeds({}, ())
+
+
 def read_speeds() -> Speeds:
     """Read what is known of this machine; nothing where there is no file, or none that can be read."""
-    held = _read().get(machine_name(), {})
-    measured = {
-        Kernel.from_key(key): {int(cells): float(step) for cells, step in steps.items()}
-        for key, steps in held.get("steps", {}).items()
-        if steps
-    }
-    return Speeds(measured, tuple(Past(float(one["seconds"]), float(one["reckoned"])) for one in held.get("runs", [])))
+    return _parsed(_read().get(machine_name()))
+
+
+def _parsed(held: Any) -> Speeds:
+    """Read one machine's part of the file; nothing where it is not as it should be."""
+    try:
+        measured = {
+            Kernel.from_key(key): {int(cells): float(step) for cells, step in steps.items() if float(step) > 0}
+            for key, steps in held.get("steps", {}).items()
+            if steps
+        }
+        past = tuple(Past(float(one["seconds"]), float(one["reckoned"])) for one in held.get("runs", []))
+        return Speeds(measured, tuple(run for run in past if min(run.seconds, run.reckoned) > 0))
+    except (AttributeError, KeyError, TypeError, ValueError):  # written by hand, or by another version
+        return NOTHING
 
 
 def measure_speed(equations: Equations, settings: TimeSettings) -> None:
@@ -224,8 +235,10 @@ def _read() -> dict[str, Any]:
 
 def _change(change: Any) -> None:
     """Change what is known of this machine; a run does not fail for it."""
-    machines = _read()
-    change(machines.setdefault(machine_name(), {}))
+    machines, here = _read(), machine_name()
+    if _parsed(machines.get(here)) == NOTHING:
+        machines[here] = {}
+    change(machines[here])
     name = ""
     try:
         with tempfile.NamedTemporaryFile("w", encoding="utf-8", dir=cache_folder(), delete=False) as file:
