@@ -27,7 +27,8 @@ def _frame_rows(facts: Facts) -> Iterator[Row]:
     if frame.body is not None:
         yield Row("body", frame.body.name, note=frame.body.meaning)
     if frame.latitude is not None:
-        yield Row("latitude", frame.latitude, "rad", "geographic, north positive")
+        shown = "" if frame.latitude else "0 deg"
+        yield Row("latitude", frame.latitude, "rad", "geographic, north positive", shown=shown)
     if frame.rotation_rate:
         period = 2 * math.pi / abs(frame.rotation_rate)
         yield Row("rotation_period", period, "s", "2 pi/Omega, against the stars" if frame.body else "2 pi/Omega")
@@ -55,7 +56,9 @@ def _gravity_note(facts: Facts) -> str:
 def _scale_rows(facts: Facts) -> Iterator[Row]:
     basin, frame = facts.basin, facts.frame
     depth, a = basin.reference_depth, basin.deformation_radius
-    yield Row("depth", depth, "m", "H, " + ("even" if basin.even else "mean, or as given"))
+    given = facts.experiment.layer.reference_depth is not None
+    kind = "given" if given else "even" if basin.even else "mean"
+    yield Row("depth", depth, "m", f"H, {kind}")
     yield Row("wave_speed", basin.wave_speed, "m/s", "c = sqrt(g H)")
     equatorial = frame.plane == "equatorial"
     if math.isfinite(a):
