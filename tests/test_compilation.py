@@ -96,10 +96,9 @@ def test_kernels_may_contract_and_never_reassociate(name):
 
 def test_compiled_kernels_are_kept_in_the_folder_of_their_digest():
     assert Path(numba.config.CACHE_DIR).name == source_digest()
-    called = [kernel for kernel in kernels().values() if kernel.targetoptions.get("parallel")]
-    assert called
-    for kernel in called:
-        assert Path(kernel.stats.cache_path).is_relative_to(numba.config.CACHE_DIR)
+    kept = [path for kernel in kernels().values() if (path := kernel.stats.cache_path)]
+    assert len(kept) > 5
+    assert all(Path(path).is_relative_to(numba.config.CACHE_DIR) for path in kept)
 
 
 def copied(folder):

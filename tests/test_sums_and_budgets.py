@@ -27,7 +27,7 @@ from flows import (
 from hypothesis import given, settings
 
 from swmodel.diagnostics.budgets import EnergyBudget
-from swmodel.diagnostics.sums import plain_sums, row_sums, sums
+from swmodel.diagnostics.sums import plain_sums, sums
 from swmodel.dynamics.tendency import EULER
 from swmodel.steppers import STEPPERS, advance
 
@@ -101,21 +101,6 @@ def test_the_vorticity_at_no_slip_walls_counts_into_circulation():
     found = sums(make_state(equations, fields).sets[0:3], setup_of(equations), basin)
     # round-off of a hundred vorticities of order 1
     assert abs(found["circulation"]) < 1e-13 * 63
-
-
-@pytest.mark.parametrize("of", [FULL, PAIRWISE[2]], ids=str)
-def test_sums_depend_on_no_number_of_threads(of):
-    import numba
-
-    basin = random_basin(np.random.default_rng(1), of, 60, 50, "box")
-    equations = equations_of(basin, of)
-    state = make_state(equations, random_flow(np.random.default_rng(2), basin.grid))
-    found = []
-    for threads in range(1, int(numba.config.NUMBA_NUM_THREADS) + 1):
-        numba.set_num_threads(threads)
-        found.append(row_sums(state.sets[0:3], setup_of(equations)))
-    for other in found[1:]:
-        assert np.array_equal(other, found[0])
 
 
 # -------------------------------------------------------------------------------------------- the energy budget
