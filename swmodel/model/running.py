@@ -272,6 +272,8 @@ class _Course:
                     snapshot=end or ticks % plan.output.steps_between_snapshots == 0,
                     diagnostics=end or ticks % plan.output.steps_between_diagnostics == 0,
                 )
+                if self.signal and not end:
+                    self._stop()
             self._checkpoint()
             self.writer.finish()
 
@@ -303,9 +305,11 @@ class _Course:
                 raise SolutionError(f"{error}; {hint}", error.time, error.place) from error
             self._pace = (clock.monotonic() - begun) / piece
             steps -= piece
+            if not steps:
+                return  # what is due at this time is stored before a signal is heeded
             if self.signal:
                 self._stop()
-            if self.report and steps:
+            if self.report:
                 self._tell()
 
     def _piece(self) -> int:
