@@ -57,7 +57,7 @@ def test_the_other_hemisphere_is_the_mirror_image(edges, slip):
 
 @pytest.mark.parametrize("edges", [PERIODIC, BOX, ALONG_X], ids=NAMES)
 def test_with_flow_and_rotation_turned_round_time_runs_back(edges):
-    # t -> -t: u' = -u, v' = -v, f' = -f. rk4 keeps that to its own error, 40 steps of (omega_max dt)^5/120 = 3e-8 of 0.3
+    # t -> -t: u, v and f change sign. rk4 keeps that to its own error, 40 steps of (omega_max dt)^5/120 = 3e-8 of 0.3
     fields = begin(edges)
     u, v, eta = after(fields, edges, stepper="rk4")
     back = after((-u, -v, eta), edges, f=-F, stepper="rk4")
