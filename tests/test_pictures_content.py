@@ -180,6 +180,20 @@ def test_theory_of_the_step_is_drawn_only_where_it_holds(why, edits, tmp_path):
     assert not any(line.is_dashed() for line in velocity.lines)
 
 
+def test_where_all_the_flow_runs_along_the_line_it_is_what_is_shown(tmp_path):
+    folder = stored_run(tmp_path / "slosh", FRONT, lambda basin, t: (0.1, 0.0, 0.1 * np.sin(basin.grid.x / 1e5)))
+    figures = figures_of(folder, "section", "time_distance")
+    assert [axes.get_ylabel() for axes in figures["section"].axes] == ["elevation η (cm)", "velocity u (cm/s)"]
+    titles = [axes.get_title(loc="left") for axes in figures["time_distance"].axes if axes.images]
+    assert titles == ["elevation η", "u, along x"]
+
+
+def test_single_precision_is_not_measured_by_the_round_off_of_double(tmp_path):
+    text = changed(FRONT, ("cells = [128, 4]", 'cells = [128, 4]\nprecision = "single"'))
+    *_, budget = figures_of(front_run(tmp_path / "front", text), "energy")["energy"].axes
+    assert not any(line.is_dashed() for line in budget.lines)
+
+
 def test_a_moving_or_a_smooth_start_is_no_step(tmp_path):
     for name, u, shape in (("moving", 0.1, np.sign), ("smooth", 0.0, lambda x: np.tanh(x / 1e4))):
         folder = stored_run(
@@ -305,3 +319,12 @@ def test_a_run_that_has_stored_its_start_alone_has_a_map_of_it(tmp_path):
     with pytest.raises(NoPictureError, match="1 snapshots make no time-distance diagram"):
         figures_of(folder, "time_distance")
     assert [path.stem for path in draw(folder)] == ["map", "section", "expectation-1"]
+
+
+def test_an_elevation_that_has_died_down_is_shown_on_a_scale_of_its_own(tmp_path):
+    folder = stored_run(tmp_path / "dying", EDDY, lambda basin, t: (0.0, 0.0, 0.2 * 10 ** (-t / 3600)))
+    figure = figures_of(folder, "map")["map"]
+    first, last = (axes.images[0].norm.vmax for axes in figure.axes if axes.images)
+    # 0.2 m and, after 10 h, 2e-11 m
+    assert (first, last) == pytest.approx((0.2, 2e-11))
+    assert len([axes for axes in figure.axes if axes.get_xlabel().startswith("elevation η")]) == 2

@@ -133,7 +133,7 @@ def test_values_are_written_in_the_unit_of_their_size(values, unit, name, size):
         (13713.0, "m", "13.7 km"),
         (-3.5282, "m/s", "−3.53 m/s"),
         (0.0141, "m/s", "1.41 cm/s"),
-        (-1.031e-4, "rad/s", "−103·10⁻⁶ rad/s"),
+        (-1.031e-4, "rad/s", "−1.03·10⁻⁴ rad/s"),
         (0.0, "rad/s", "0 rad/s"),
         (0.03, "1", "0.03"),
         (1e-6, "1", "1·10⁻⁶"),

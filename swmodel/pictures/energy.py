@@ -43,7 +43,7 @@ def _paint(scene: Scene) -> Page:
         _headline(scene, total, terms, scale),
         height=KEY + TALL + (len(panels) - 1) * (GAP + LOW) + ("budget" in panels) * KEY + BELOW,
         over=scene.title,
-        notes=[*_notes(total, scale), scene.origin],
+        notes=[*_notes(total, scale, closed=_closed(scene)), scene.origin],
     )
     width = INSIDE - LEFT
     time = unit_for(record.series_times, "s")
@@ -59,7 +59,7 @@ def _paint(scene: Scene) -> Page:
         elif panel == "drift":
             _drift(axes, at, total, height)
         else:
-            _budget(axes, at, terms, scale)
+            _budget(axes, at, terms, scale, closed=_closed(scene))
         label = "time" if n == len(panels) - 1 else ""
         set_axis(axes, "x", (float(at[0]), float(at[-1])), time, label, inches=width)
     page.figure.align_ylabels()
@@ -87,17 +87,19 @@ def _drift(axes: Axes, at: Array, total: Array, height: float) -> None:
     set_axis(axes, "y", padded(drift / unit.size), unit, "drift of the sum", inches=height)
 
 
-def _budget(axes: Axes, at: Array, terms: dict[str, Array], scale: float) -> None:
+def _budget(axes: Axes, at: Array, terms: dict[str, Array], scale: float, *, closed: bool) -> None:
     """Draw the sizes of the small terms on a scale of powers of ten."""
     from matplotlib.ticker import FuncFormatter, LogLocator, NullLocator
 
     shown = [(name, np.abs(terms[name]) / scale) for name in TERMS if name in terms and largest(terms[name])]
     lowest = min((float(share[share > LEAST].min()) for _, share in shown if (share > LEAST).any()), default=1e-16)
     highest = max((largest(share) for _, share in shown), default=0.0)
-    low = 10.0 ** np.floor(np.log10(min(lowest, 1e-16)))
-    high = 10.0 ** np.ceil(np.log10(max(highest, 3 * CLOSED)))
+    if closed:
+        lowest, highest = min(lowest, 1e-16), max(highest, 3 * CLOSED)
+    low, high = 10.0 ** np.floor(np.log10(lowest)), 10.0 ** np.ceil(np.log10(max(highest, 10 * lowest)))
     axes.set_yscale("log")
-    axes.axhline(CLOSED, color=EXPECTED, linestyle=(0, (4, 2.2)), linewidth=0.8)
+    if closed:
+        axes.axhline(CLOSED, color=EXPECTED, linestyle=(0, (4, 2.2)), linewidth=0.8)
     for name, share in shown:
         text, colour = TERMS[name]
         axes.plot(at, np.where(share > LEAST, share, np.nan), ".-", color=colour, linewidth=0.7, ms=2.5, label=text)
@@ -131,15 +133,19 @@ def _headline(scene: Scene, total: Array, terms: dict[str, Array], scale: float)
     return text
 
 
-def _notes(total: Array, scale: float) -> list[str]:
+def _closed(scene: Scene) -> bool:
+    """Whether round-off can be told from a fault: single precision rounds the terms themselves."""
+    return scene.basin.grid.precision == "double"
+
+
+def _notes(total: Array, scale: float, *, closed: bool) -> list[str]:
     notes = []
     if total[0]:
         notes.append(
             f"energy at the start: {number(float(total[0]), 4)} m⁵/s² per unit density, potential counted from rest"
         )
     if scale:
-        notes.append(
-            f"largest term of the budget: {number(scale)} m⁵/s³; dashed: {power_of_ten(-12)}, what round-off leaves "
-            "where the terms are not small, as they are in a steady flow"
-        )
+        text = f"largest term of the budget: {number(scale)} m⁵/s³"
+        steady = "what round-off leaves where the terms are not small, as they are in a steady flow"
+        notes.append(f"{text}; dashed: {power_of_ten(-12)}, {steady}" if closed else text)
     return ["; ".join(notes)]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import partial
@@ -95,10 +96,11 @@ def _paint(scene: Scene) -> Page:
     flows = [_flow(scene, k) for k in numbers] if scene.has_velocity else []
     sizes = [largest(eta) for eta in etas]
     own = min(sizes) > 0 and max(sizes) > OWN_SCALE * min(sizes)
+    limits = [round_up(size if own else max(sizes)) for size in sizes]
     x, y = record.x_face, record.y_face
     layout = _Layout.of(float((y[-1] - y[0]) / (x[-1] - x[0])), len(numbers), own)
     page = Page(
-        _headline(scene, sizes, flows),
+        _headline(scene, sizes, limits, flows),
         height=layout.content,
         over=scene.title,
         under=scene.experiment.question,
@@ -108,7 +110,7 @@ def _paint(scene: Scene) -> Page:
     speed = max((largest(np.hypot(*flow)) for flow in flows), default=0.0)
     for n, (place, eta) in enumerate(zip(layout.places, etas, strict=True)):
         axes = page.axes(*place, layout.width, layout.height)
-        limit = round_up(sizes[n] if own else max(sizes))
+        limit = limits[n]
         image = axes.imshow(
             eta,
             extent=(x[0] / length.size, x[-1] / length.size, y[0] / length.size, y[-1] / length.size),
@@ -137,14 +139,19 @@ def _paint(scene: Scene) -> Page:
     return page
 
 
-def _headline(scene: Scene, sizes: Sequence[float], flows: Sequence[tuple[Array, Array]]) -> str:
+def _headline(
+    scene: Scene, sizes: Sequence[float], limits: Sequence[float], flows: Sequence[tuple[Array, Array]]
+) -> str:
     """What the map shows, in numbers."""
     speed = f", speed {written(largest(np.hypot(*flows[-1])), 'm/s', 2)}" if flows else ""
     if not max(sizes):
         return f"The surface is level {scene.after(-1)}{speed}"
-    text = f"|η| reaches {written(sizes[0], 'm', 2)} {scene.after(0)}"
+    first, last = (
+        unit_for(limit, "m").text(size, 2) for limit, size in ((limits[0], sizes[0]), (limits[-1], sizes[-1]))
+    )
+    text = f"|η| reaches {first} {scene.after(0)}"
     if len(sizes) > 1:
-        text += f" and {written(sizes[1], 'm', 2)} {scene.after(-1)}"
+        text += f" and {last} {scene.after(-1)}"
     return f"{text}{speed}"
 
 
@@ -250,7 +257,8 @@ def _key_speed(speed: float) -> float:
 
 def _every(cells: int, inches: float) -> slice:
     """Return the cells of a direction that get an arrow, the outermost as far from either side."""
-    step = max(1, round(cells * ARROW_SPACING / inches))
+    # a fifth closer is still read
+    step = max(1, math.ceil(cells * ARROW_SPACING / inches - 0.2))
     return slice(((cells - 1) % step) // 2, None, step)
 
 

@@ -103,7 +103,10 @@ def written(value: float, unit: str, digits: int = 3) -> str:
     digits : int
         Significant digits.
     """
-    return number(value, digits) if unit in ("", "1") else unit_for(value, unit).text(value, digits)
+    suited = unit_for(value, unit)
+    if suited.name.startswith("10"):
+        suited = Unit(1.0, "" if unit == "1" else typeset(unit))
+    return suited.text(value, digits)
 
 
 def typeset(unit: str) -> str:

@@ -21,6 +21,7 @@ if TYPE_CHECKING:
 LEFT, KEY, GAP, BELOW = 0.72, 0.3, 0.16, 0.42  # inches
 TALL, LOW = 2.5, 1.55
 COMPARED = 8.0  # deformation radii on either side of a step within which theory and model are compared
+FAINTEST = 0.01  # of the velocity along the line: less across it is not shown
 SMALL = 0.1  # of the depth: theory is for small steps
 DASHED = (0, (4, 2.2))
 
@@ -62,8 +63,7 @@ def _paint(scene: Scene) -> Page:
     scene.need("eta")
     cut = cut_of(scene)
     step = _step(scene, cut)
-    across = "v" if cut.along == "x" else "u"
-    panels = ["eta", *([across] if across in scene.record.names else [])]
+    panels = ["eta", *_velocity(scene, cut)]
     first, last = cut.ends(scene)
     length = unit_for((first, last), "m")
     page = Page(
@@ -79,13 +79,13 @@ def _paint(scene: Scene) -> Page:
         height = LOW if n else TALL
         axes = page.axes(LEFT, KEY + n * (TALL + GAP), width, height)
         theory = np.zeros(0)
-        if step is not None:
+        if step is not None and name != ("u" if cut.along == "x" else "v"):
             theory = step.elevation(scene, s) if name == "eta" else step.velocity(scene, s, cut)
         unit = _curves(axes, scene, cut, name, theory)
-        if step is not None:
+        if theory.size:
             label = f"theory: end state of the step, a = {written(scene.basin.deformation_radius, 'm')}"
             axes.plot(s / length.size, theory / unit.size, color=EXPECTED, linestyle=DASHED, linewidth=1.2, label=label)
-        elif name == "eta":
+        elif step is None and name == "eta":
             _expected_curves(axes, scene, cut, length, unit)
         shown = [np.asarray(line.get_ydata()) for line in axes.lines]
         text = "elevation η" if name == "eta" else f"velocity {name}"
@@ -96,6 +96,16 @@ def _paint(scene: Scene) -> Page:
             axes.legend(loc="lower left", bbox_to_anchor=(0, 1.0), ncols=4, borderaxespad=0.2, columnspacing=1.6)
     page.figure.align_ylabels()
     return page
+
+
+def _velocity(scene: Scene, cut: Cut) -> list[str]:
+    """Choose the velocity that is shown: the one across the line, unless all the flow goes along it."""
+    names = ("v", "u") if cut.along == "x" else ("u", "v")
+    stored = [name for name in names if name in scene.record.names]
+    if len(stored) < 2:
+        return stored
+    across, along = (largest(cut.lines(scene, name, np.array([0, -1]))) for name in names)
+    return [names[0] if across >= FAINTEST * along else names[1]]
 
 
 def _curves(axes: Axes, scene: Scene, cut: Cut, name: str, theory: Array) -> Unit:

@@ -6,6 +6,7 @@ from functools import partial
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from .colours import EXPECTED, FAINT, INK, signed_map
 from .cut import Cut, cut_of, same_line
@@ -35,7 +36,14 @@ def _paint(scene: Scene) -> Page:
     if scene.times.size < 3:
         raise NoPictureError(f"{scene.times.size} snapshots make no time-distance diagram")
     cut = cut_of(scene)
-    names = ["eta", *([name for name in ("u", "v") if name in scene.record.names] if scene.thin else [])]
+    rows = _rows(scene.times)
+    fields = {
+        name: cut.lines(scene, name, rows)
+        for name in (("eta", "u", "v") if scene.thin else ("eta",))
+        if name in scene.record.names
+    }
+    # a velocity that is 0 throughout shows nothing
+    names = [name for name, values in fields.items() if name == "eta" or largest(values)]
     page = Page(
         f"{'Elevation and velocity' if len(names) > 1 else 'Elevation'} against time, {cut.where}",
         height=TITLE + HEIGHT + BELOW + BAR,
@@ -44,12 +52,11 @@ def _paint(scene: Scene) -> Page:
         notes=[_note(scene, cut), scene.origin],
     )
     width = (INSIDE - LEFT - GAP * (len(names) - 1)) / len(names)
-    rows = _rows(scene.times)
     length = unit_for(cut.ends(scene), "m")
     time = unit_for(scene.times, "s")
     for n, name in enumerate(names):
         axes = page.axes(LEFT + n * (width + GAP), TITLE, width, HEIGHT)
-        _panel(page, axes, scene, cut, name, rows, (length, time), (n, width))
+        _panel(page, axes, scene, cut, name, fields[name], (length, time), (n, width))
         if name == "eta":
             _expected_paths(axes, scene, cut, length, time)
             _wave_speed(axes, scene, cut, length, time)
@@ -64,7 +71,7 @@ def _note(scene: Scene, cut: Cut) -> str:
     return "; ".join(notes)
 
 
-def _rows(times: Array) -> Array:
+def _rows(times: Array) -> NDArray[np.intp]:
     """Numbers of the snapshots nearest to evenly spaced times."""
     even = np.linspace(times[0], times[-1], min(times.size, ROWS))
     after = np.clip(np.searchsorted(times, even), 1, times.size - 1)
@@ -77,16 +84,15 @@ def _panel(
     scene: Scene,
     cut: Cut,
     name: str,
-    rows: Any,
+    values: Array,
     units: tuple[Unit, Unit],
     place: tuple[int, float],
 ) -> None:
     """Draw one field, its axes and its colour bar."""
     length, time = units
     order, width = place
-    values = cut.lines(scene, name, rows)
     points, ends, times = cut.points(scene, name), cut.ends(scene), scene.times
-    half_x, half_t = (points[1] - points[0]) / 2, (times[-1] - times[0]) / (rows.size - 1) / 2
+    half_x, half_t = (points[1] - points[0]) / 2, (times[-1] - times[0]) / (len(values) - 1) / 2
     limit = round_up(largest(values))
     image = axes.imshow(
         values,
