@@ -194,10 +194,7 @@ class Model:
         """Halve the step where the flow has outgrown what it allows for; a given step stays."""
         if self.plan.step.given or self.equations.linear:
             return False
-        grid, step = self.basin.grid, self.plan.step
-        advection = float(np.abs(self.u).max()) / grid.dx + float(np.abs(self.v).max()) / grid.dy
-        limit = stability_limit(self.settings.stepper, self.settings.filter, self.settings.williams)
-        used = self.dt * (step.omega_max + advection) / limit
+        used = self._share_of_limit(self._advection())
         margin = self.settings.margin
         if used <= margin + OUTGROWN * (1 - margin):
             return False
@@ -212,8 +209,9 @@ class Model:
         return True
 
     def checkpoint(self) -> Checkpoint:
-        """Return all that the next step depends on."""
-        levels = [self.state.level(k) for k in range(1 if self._first else self._levels)]
+        """Return a copy of all that the next step depends on."""
+        number = 1 if self._first else self._levels
+        levels = [(u.copy(), v.copy(), eta.copy()) for u, v, eta in map(self.state.level, range(number))]
         origin_steps, origin_time = self._origin
         extra = {"halvings": self.halvings, "origin_steps": origin_steps, "origin_time": origin_time}
         return Checkpoint(self.time, self.steps, self.dt, levels, extra)
@@ -261,17 +259,28 @@ class Model:
         for _ in range(steps):
             kept = self._kept()
             before = self.state.steps, self._first
+            advection = self._advection()
             self._advance(1)
             if self._least_thickness() <= 0:
-                error = self._unphysical()
+                error = self._unphysical(max(advection, self._advection()))
                 self.state.sets[: len(kept)] = kept
                 self.state.steps, self._first = before
                 self._set_time()
                 raise error
         raise AssertionError("a block went bad, but none of its steps did")
 
-    def _unphysical(self) -> SolutionError:
-        """Say what is wrong with the present state, where, and the likely cause."""
+    def _advection(self) -> float:
+        """U/dx + V/dy of the largest flow that is a number, 1/s."""
+        u, v = (float(np.nanmax(np.abs(speed), initial=0.0)) for speed in (self.u, self.v))
+        return u / self.basin.grid.dx + v / self.basin.grid.dy
+
+    def _share_of_limit(self, advection: float) -> float:
+        """Share of the stability limit that the step uses with a flow of U/dx + V/dy = `advection`."""
+        limit = stability_limit(self.settings.stepper, self.settings.filter, self.settings.williams)
+        return self.dt * (self.plan.step.omega_max + advection) / limit
+
+    def _unphysical(self, advection: float) -> SolutionError:
+        """Say what is wrong with the present state, where, and the likely cause, with a flow of `advection`."""
         grid = self.basin.grid
         h = self.basin.depth_field + self.eta
         finite = np.isfinite(h) & np.isfinite(self.u[:, 1:]) & np.isfinite(self.v[1:])
@@ -279,13 +288,10 @@ class Model:
         place = float(grid.x[i]), float(grid.y[j])
         dried = bool(finite.all())
         what = "the layer dries" if dried else "a value is not finite"
-        with np.errstate(invalid="ignore"):
-            flow = np.nanmax(np.abs(self.u)) / grid.dx + np.nanmax(np.abs(self.v)) / grid.dy
-        limit = stability_limit(self.settings.stepper, self.settings.filter, self.settings.williams)
-        used = self.dt * (self.plan.step.omega_max + float(flow)) / limit
+        used = self._share_of_limit(advection)
         if used > 1 or not math.isfinite(used):
             cause = (
-                f"the step of {self.dt:.4g} s is too long for the flow ({used:.3g} of the stability limit): shorten it"
+                f"the step of {self.dt:.6g} s is too long for the flow ({used:.3g} of the stability limit): shorten it"
             )
             cause += ", or give [time] speed; or the grid is too coarse for the flow's gradients: refine it"
         elif dried:
