@@ -1,7 +1,8 @@
 """Time stepping: coefficients, claims, the largest stable step, and the step that hits every output time.
 
 A method is its coefficients plus its claims; no physics here. Stages are written as
-``out = base + (blend (y - base) + weight dt dy/dt)``, so that a constant stays constant to the last bit.
+``out = base + (blend (y - base) + weight dt dy/dt)``, so that a constant stays constant to the last bit (equation 7 of
+docs/equations.md).
 """
 
 from __future__ import annotations
