@@ -7,7 +7,7 @@ from collections.abc import Callable, Mapping
 from pathlib import Path
 from typing import Any
 
-from .parsing import LISTS
+from .words import LISTS
 
 WIDTH = 80
 Table = dict[str, str]

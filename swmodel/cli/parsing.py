@@ -8,6 +8,7 @@ from collections.abc import Sequence
 from typing import NoReturn
 
 from ..errors import CAUTION, VERSION, SwmodelError
+from .words import COMMANDS, LISTS
 
 PROGRAM = "swmodel"
 DESCRIPTION = """\
@@ -18,7 +19,6 @@ EXIT_CODES = """\
 exit codes: 0 done; 1 an expectation fails; 2 the request is wrong or the
 check refuses it; 3 the solution became unphysical; 4 the machine failed it;
 130/143 stopped by a signal, checkpoint written"""
-LISTS = ("bodies", "planes", "starts", "measures", "theory", "pv-fluxes", "steppers", "figures", "configs")
 
 
 class _Parser(argparse.ArgumentParser):
@@ -85,18 +85,6 @@ def build_parser() -> argparse.ArgumentParser:
 
     command("schema")
     return parser
-
-
-COMMANDS = {
-    "check": "say whether a set-up can answer its question, and what it will cost; nothing is run",
-    "run": "check, run, judge and draw an experiment",
-    "resume": "go on with a run from its last checkpoint, bit for bit",
-    "judge": "hold what a run left against what was expected",
-    "draw": "draw the figures of a run",
-    "list": "list what there is to choose from, each with its meaning",
-    "new": "write a commented configuration here to begin from",
-    "schema": "print the JSON Schema of the configuration, for editors",
-}
 
 
 def main(arguments: Sequence[str] | None = None) -> int:
