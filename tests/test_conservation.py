@@ -19,6 +19,7 @@ from flows import (
     random_basin,
     random_flow,
     run,
+    stepped,
     watched,
 )
 
@@ -32,8 +33,7 @@ from swmodel.state.starts import Vortex
 from swmodel.steppers import STEPPERS, stability_limit
 
 
-@pytest.mark.parametrize("stepper", STEPPERS)
-@pytest.mark.parametrize("of", [row for row in PAIRWISE if row.depth == "uneven"], ids=str)
+@pytest.mark.parametrize(("of", "stepper"), stepped([row for row in PAIRWISE if row.depth == "uneven"]))
 def test_rest_over_rough_topography_stays_rest_to_the_last_bit(of, stepper):
     # hydrostatics: pressure by eta, not h; in double and in single precision, whatever the edges
     for edges in EDGES:
