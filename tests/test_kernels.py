@@ -11,6 +11,7 @@ from flows import (
     EACH,
     EACH_PAIRWISE,
     EDGE_NAMES,
+    EDGES,
     PAIRWISE,
     SEEDS,
     SIZES,
@@ -123,3 +124,17 @@ def test_both_ends_of_a_periodic_direction_stay_equal_and_walls_shut(of):
         else:
             assert not u[:, [0, -1]].any()
             assert not v[[0, -1]].any()
+
+
+@pytest.mark.parametrize(("of", "stepper"), stepped([row for row in PAIRWISE if row.depth == "uneven"]))
+def test_rest_over_rough_topography_stays_rest_to_the_last_bit(of, stepper):
+    # hydrostatics: pressure by eta, not h; in double and in single precision, whatever the edges
+    for edges in EDGES:
+        basin = random_basin(np.random.default_rng(2), of, 13, 9, edges)
+        u, v, eta = (np.zeros(basin.grid.shape(where), basin.grid.dtype) for where in ("u", "v", "centre"))
+        # a raised level is rest too; 0.1 has no exact binary form
+        for level in (0.0, 0.1):
+            found = run(equations_of(basin, of), (u, v, eta + basin.grid.dtype.type(level)), stepper, 0.2, 100)
+            assert not found[0].any()
+            assert not found[1].any()
+            assert np.all(found[2] == basin.grid.dtype.type(level))

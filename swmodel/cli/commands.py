@@ -10,6 +10,7 @@ from pathlib import Path
 from typing import Any
 
 from ..errors import CAUTION, Fault, RequestError
+from .words import folded
 
 FAILED = 1
 
@@ -31,7 +32,7 @@ def run_command(options: argparse.Namespace) -> int:
     experiment = _experiment(options)
     outlook = check(experiment)
     for caution in outlook.cautions:
-        print(f"caution: {caution}", file=sys.stderr)
+        print(folded(f"caution: {caution}"), file=sys.stderr)
     with shown_progress(experiment.title or str(experiment.path)) as report:
         from ..model import run
 
@@ -139,8 +140,9 @@ def _ended(folder: Path, *, strict: bool) -> int:
     verdict = judge(folder)
     figures = draw(folder)
     print(verdict)
-    print(f"run: {folder}   figures: {', '.join(path.name for path in figures)}")
-    print(CAUTION, file=sys.stderr)
+    print(f"run: {folder}")
+    print(folded(f"figures: {', '.join(path.name for path in figures)}"))
+    print(folded(CAUTION), file=sys.stderr)
     return _code(verdict.overall, strict=strict)
 
 

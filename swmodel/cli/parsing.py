@@ -8,7 +8,7 @@ from collections.abc import Sequence
 from typing import NoReturn
 
 from ..errors import CAUTION, VERSION, SwmodelError
-from .words import COMMANDS, LISTS
+from .words import COMMANDS, LISTS, folded
 
 PROGRAM = "swmodel"
 DESCRIPTION = """\
@@ -40,7 +40,7 @@ def build_parser() -> argparse.ArgumentParser:
     parser = _Parser(
         prog=PROGRAM,
         description=DESCRIPTION,
-        epilog=f"{EXIT_CODES}\n\n{_folded(CAUTION)}",
+        epilog=f"{EXIT_CODES}\n\n{folded(CAUTION)}",
         formatter_class=argparse.RawDescriptionHelpFormatter,
         allow_abbrev=False,
     )
@@ -50,7 +50,7 @@ def build_parser() -> argparse.ArgumentParser:
     def command(name: str) -> argparse.ArgumentParser:
         # one text for the listing and for the command's own help
         return commands.add_parser(
-            name, help=COMMANDS[name], description=COMMANDS[name], epilog=_folded(CAUTION), allow_abbrev=False
+            name, help=COMMANDS[name], description=COMMANDS[name], epilog=folded(CAUTION), allow_abbrev=False
         )
 
     check = command("check")
@@ -118,13 +118,6 @@ def _message(error: SwmodelError) -> str:
     if len(faults) > 1:
         text += f"\n{len(faults)} faults; nothing was written"
     return text
-
-
-def _folded(text: str) -> str:
-    """Fold a sentence to the width of a help text."""
-    import textwrap
-
-    return textwrap.fill(text, 78)
 
 
 def _configuration(parser: argparse.ArgumentParser) -> None:

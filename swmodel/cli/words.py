@@ -1,6 +1,8 @@
-"""The words of the command line, each command with its meaning."""
+"""The words of the command line, each command with its meaning, and the width they are folded to."""
 
 from __future__ import annotations
+
+import textwrap
 
 COMMANDS = {
     "check": "say whether a set-up can answer its question, and what it will cost; nothing is run",
@@ -14,3 +16,8 @@ COMMANDS = {
 }
 
 LISTS = ("bodies", "planes", "starts", "measures", "theory", "pv-fluxes", "steppers", "figures", "configs")
+
+
+def folded(text: str) -> str:
+    """Fold a sentence to the width of a terminal."""
+    return textwrap.fill(text, 79, break_long_words=False, break_on_hyphens=False)

@@ -24,6 +24,7 @@ from ..quantities import TIME, format_quantity, read_quantity
 from ..settings import Experiment
 from ..store.checkpoints import read_checkpoint
 from ..store.durable import write_json
+from ..store.lock import FolderLock
 from ..store.provenance import digest, gather_provenance, package_versions
 from ..store.reading import VERDICT, Run
 from ..store.writer import RunWriter, free_folder
@@ -150,8 +151,11 @@ def resume(
     ------
     RequestError
         Where the folder is no run's, or the new end does not fit the step.
+    MachineError
+        Where another process still holds the folder.
     """
     held = Run(folder)
+    FolderLock(held.folder).release()  # a run that still goes on is told first, with its holder
     experiment = Experiment.from_json(held.settings)
     kept = read_checkpoint(Path(folder), digest(experiment.as_json()))
     begun = Begun(float(kept.extra["step"]), int(kept.extra["snapshots_every"]), int(kept.extra["diagnostics_every"]))
