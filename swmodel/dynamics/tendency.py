@@ -16,7 +16,7 @@ from .sweeps import Setup, one_step, work_rows
 
 EULER = ((0.0, 1.0),)  # out = base + dt T: with base 0 and dt 1 it is the tendency itself
 ROWS_A_BAND = 24  # fewer rows a thread and the overlap that each band recomputes eats the gain
-CELLS_A_BAND = 4096
+CELLS_A_BAND = 8192  # fewer, and on a busy machine threads wait longer for each other than they work
 
 numba_config: Any = numba.config
 numba_config.THREADING_LAYER_PRIORITY = ["omp", "tbb", "workqueue"]
