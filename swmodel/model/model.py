@@ -180,6 +180,7 @@ class Model:
         """Conserved quantities and extremes of the present state; see `diagnostics.sums.gather_sums`."""
         from ..diagnostics.sums import sums
 
+        self._fill()  # the views may have been written into
         return sums(self.state.sets[0:3], self._setup, self.basin)
 
     def energy_budget(self) -> dict[str, float]:
@@ -188,6 +189,7 @@ class Model:
 
         if self._budget is None:
             self._budget = EnergyBudget(self.equations, self.settings)
+        self._fill()
         return self._budget.rates(self.state, self.dt, first=self._first)
 
     def halve_step_if_outgrown(self) -> bool:

@@ -38,7 +38,7 @@ def _rows(facts: Facts) -> Iterator[Row]:
     grid = facts.grid
     yield Row("cells", grid.nx * grid.ny, "", shown=f"{grid.nx} x {grid.ny}", note=f"{grid.precision} precision")
     for direction in DIRECTIONS:
-        note = "periodic" if facts.periodic(direction) else f"walls, {grid.slip} slip"
+        note = "periodic" if facts.periodic(direction) else f"walls, {'free' if grid.slip == 'free' else 'no'} slip"
         if direction not in facts.varying:
             note += "; nothing varies along it"
         size = format_quantity(facts.size(direction), "m")
