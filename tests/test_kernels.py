@@ -27,6 +27,7 @@ from flows import (
 )
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from rates import ROUND_OFF, energy_rates, enstrophy_rates, relative, states
 
 from swmodel.dynamics import PV_FLUXES
 from swmodel.dynamics.tendency import Equations
@@ -138,3 +139,16 @@ def test_rest_over_rough_topography_stays_rest_to_the_last_bit(of, stepper):
             assert not found[0].any()
             assert not found[1].any()
             assert np.all(found[2] == basin.grid.dtype.type(level))
+
+
+@pytest.mark.parametrize("of", [row for row in PAIRWISE if row.precision == "double"], ids=str)
+def test_the_fused_kernels_keep_what_their_flux_keeps(of):
+    flux = PV_FLUXES[of.pv_flux]
+    for basin, fields in states(of, 100):
+        rates = fast_tendency(equations_of(basin, of), fields)
+        if flux.conserves_energy:
+            assert relative(energy_rates(basin, fields, rates, of.linear)) < ROUND_OFF
+    for basin, fields in states(of, 100, ("periodic",)):
+        rates = fast_tendency(equations_of(basin, of), fields)
+        if flux.conserves_enstrophy and not of.linear:
+            assert relative(enstrophy_rates(basin, fields, rates)) < ROUND_OFF
