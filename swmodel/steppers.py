@@ -223,6 +223,10 @@ def choose_step(
     factor = stability_limit(settings.stepper, settings.filter, settings.williams)
     largest = factor / (omega_max + advection) if omega_max + advection > 0 else math.inf
     limit = settings.margin * largest
+    short = min(times, key=lambda key: times[key])
+    if times[short] < float(MICROSECOND):
+        found = f"{times[short]:g} s is too short"
+        raise RequestError(Fault(tuple(short.split(".")), found, "at least a microsecond, to which times are kept"))
     common = common_divisor(list(times.values()))
     if settings.step != "auto":
         return _given_step(settings.step, largest, limit, omega_max, advection, common, times)

@@ -325,6 +325,11 @@ def test_a_given_step_is_taken_as_it_is():
             "the step of 121.2 s that the margin allows; intervals with a larger common divisor; "
             "round them to multiples of 200 s, or leave out the odd one",
         ),
+        (
+            {},
+            {"time.until": 86400.0, "output.every": 1e-7},
+            "output.every: 1e-07 s is too short; at least a microsecond, to which times are kept",
+        ),
     ],
 )
 def test_a_step_that_cannot_be_is_refused_with_a_remedy(keys, times, message):
