@@ -220,6 +220,9 @@ def choose_step(
     RequestError
         Where a given step is above the limit or does not divide, or the times force the step below half its limit.
     """
+    if settings.stepper == "leapfrog" and settings.filter > 0 and settings.williams <= 0.5:
+        found = f"the filtered leapfrog with williams = {settings.williams:g} grows at every step"
+        raise RequestError(Fault(("time", "williams"), found, "above 0.5, up to 1", "0.7 by default"))
     factor = stability_limit(settings.stepper, settings.filter, settings.williams)
     largest = factor / (omega_max + advection) if omega_max + advection > 0 else math.inf
     limit = settings.margin * largest

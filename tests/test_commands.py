@@ -210,6 +210,66 @@ def test_resume_goes_beyond_the_old_end(step, tmp_path, capsys):
     assert "the nearest is" in capsys.readouterr().err
 
 
+def test_a_run_that_did_not_reach_its_end_is_undecided_where_the_end_was_meant(step, tmp_path):
+    short = tmp_path / "short"
+    assert main(["run", str(step), "--into", str(short), "--set", "time.until=1 day"]) == 0
+    # the same folder, had the run been meant to last longer
+    settings = json.loads((short / "settings.json").read_text())
+    settings["time"]["until"] = 4 * 86400.0
+    (short / "settings.json").write_text(json.dumps(settings))
+    verdict = swmodel.judge(short)
+    assert verdict.overall == "undecided"
+    assert verdict.expectations[0].reason == "the run ended at 1 day of 4 day"
+
+
+def test_resume_does_not_go_back(step, tmp_path, capsys):
+    assert main(["run", str(step), "--into", str(tmp_path / "run"), "--set", "time.until=1 day"]) == 0
+    assert main(["resume", str(tmp_path / "run"), "--until", "12 h"]) == 2
+    assert "has reached 1 day already" in capsys.readouterr().err
+    assert json.loads((tmp_path / "run" / "settings.json").read_text())["time"]["until"] == 86400.0
+
+
+def test_resume_refuses_another_pv_flux(step, tmp_path):
+    experiment = swmodel.read(step).with_values({"time.until": "1 day"})
+    swmodel.run(experiment, into=tmp_path / "run")
+    from swmodel.dynamics import PV_FLUXES
+    from swmodel.model import resume
+
+    with pytest.raises(swmodel.RequestError, match="PV flux is not what the run began with"):
+        resume(tmp_path / "run", "2 day", pv_flux=PV_FLUXES["energy"])
+
+
+def test_resume_from_the_very_start_equals_the_uninterrupted_run(step, tmp_path):
+    from swmodel.model import Model, resume
+    from swmodel.model.course import Course
+    from swmodel.outlook.plan import make_plan
+    from swmodel.store.provenance import gather_provenance
+    from swmodel.store.writer import RunWriter
+
+    experiment = swmodel.read(step).with_values({"time.until": "6 h"})
+    plan = make_plan(experiment)
+    provenance = gather_provenance(experiment.text, experiment.as_json(), ["swmodel"])
+    begun, whole = tmp_path / "begun", tmp_path / "whole"
+    with RunWriter(begun, plan.basin, provenance=provenance, output=plan.output, epoch=experiment.time.start) as writer:
+        course = Course(Model(experiment, plan=plan), plan, writer, None)
+        course._store(snapshot=True, diagnostics=True)
+        course._checkpoint()
+    resume(begun)
+    swmodel.run(experiment, into=whole)
+    assert_same_runs(begun, whole)
+
+
+def test_a_fault_of_our_own_is_not_taken_for_a_failed_expectation(step, monkeypatch, capsys):
+    from swmodel.cli import commands
+
+    def broken(options):
+        raise ZeroDivisionError
+
+    monkeypatch.setattr(commands, "check_command", broken)
+    assert main(["check", str(step)]) == 4
+    assert "a fault of swmodel" in capsys.readouterr().err
+
+
 def test_a_folder_in_use_gives_exit_4(step, tmp_path, capsys):
     folder = tmp_path / "run"
     command = [

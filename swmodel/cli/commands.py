@@ -30,7 +30,7 @@ def run_command(options: argparse.Namespace) -> int:
     from .progress import shown_progress
 
     experiment = _experiment(options)
-    outlook = check(experiment)
+    outlook = check(experiment, into=options.into)
     for caution in outlook.cautions:
         print(folded(f"caution: {caution}"), file=sys.stderr)
     with shown_progress(experiment.title or str(experiment.path)) as report:

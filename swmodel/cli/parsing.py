@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import argparse
 import sys
+import traceback
 from collections.abc import Sequence
 from typing import NoReturn
 
-from ..errors import CAUTION, VERSION, SwmodelError
+from ..errors import CAUTION, VERSION, MachineError, SwmodelError
 from .words import COMMANDS, LISTS, folded
 
 PROGRAM = "swmodel"
@@ -109,6 +110,13 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return 0
     except KeyboardInterrupt:
         return 130
+    except Exception:
+        traceback.print_exc()
+        print(
+            folded("This is a fault of swmodel and not of your experiment: please report the lines above."),
+            file=sys.stderr,
+        )
+        return MachineError.exit_code
 
 
 def _message(error: SwmodelError) -> str:

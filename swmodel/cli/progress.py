@@ -51,7 +51,7 @@ def _bar(title: str) -> Iterator[Callable[[Progress], None]]:
         TextColumn("energy {task.fields[drift]}"),
     )
     console = Console(stderr=True)
-    console.print(title, highlight=False)
+    console.print(title, highlight=False, markup=False)
     with Bar(*columns, console=console) as bar:
         task = bar.add_task("", total=1.0, model_time="preparing (first use compiles)", rate="", drift="")
         begun: list[float] = []

@@ -67,6 +67,8 @@ def _latitude_faults(settings: FrameSettings) -> list[Fault]:
 
 def _outright_faults(settings: FrameSettings) -> list[Fault]:
     """Latitude and f0, beta on the planes that take either."""
+    if settings.plane == "equatorial" and settings.beta == 0:
+        return [Fault(("frame", "beta"), "beta is 0", "a beta that is not 0", 'leave it out, or choose plane = "none"')]
     if settings.plane not in ("f", "beta", "sine"):
         return []
     needs_beta = settings.plane != "f"

@@ -211,6 +211,10 @@ def faults(expect: ExpectSettings, number: int, record: Record, starts: Sequence
     if expected is not None and expected.unit and unit and not same_dimension(expected.unit, unit):
         found.append(Fault(("value",), f"{_named(expected)} is {describe(expected.unit)}", f"{describe(unit)}"))
     found += _within_faults(expect.within, expected, unit)
+    turning = getattr(expect.measure, "of", None) == "velocity"
+    if getattr(expect.measure, "kind", "") == "frequency" and not turning and expected and expected.value < 0:
+        what = f"{_named(expected)} is negative, and the frequency of {expect.measure.of} has no sense of turning"
+        found.append(Fault(("value",), what, "a frequency above 0", 'measure of = "velocity", or expect its size'))
     refuse = getattr(expect.measure, "faults", None)
     if callable(refuse):
         period = expected_period(expect, record.basin, starts)
@@ -247,6 +251,9 @@ def _with_arguments(expect: ExpectSettings, basin: Basin, starts: Sequence[Any])
     }
     given = {key: value for key, value in table.model_dump(exclude={"theory"}).items() if value is not None}
     if given.get("on_grid"):
+        if not basin.even or basin.f.min() != basin.f.max():
+            found = "the relation on the grid is known for even depth and uniform f alone"
+            raise RequestError(Fault(("value",), found, "", "leave on_grid out"))
         known |= {"dx": grid.dx, "dy": grid.dy}
     family = table.theory.removesuffix("_frequency").removesuffix("_phase_speed")
     waves = [start for start in starts if getattr(start, "wave", None) == family]

@@ -168,6 +168,7 @@ def judge(
     *,
     run: str = "",
     versions: Mapping[str, str] | None = None,
+    unfinished: str = "",
 ) -> Verdict:
     """Judge a run.
 
@@ -183,13 +184,16 @@ def judge(
         The run's folder, as verdict.json names it.
     versions : mapping of str to str
         Versions of the packages that made the run.
+    unfinished : str
+        Why the run did not come to its end, where it did not. A measure without a window of its own means the whole run
+        or its end, and is then undecided.
 
     Returns
     -------
     Verdict
         What cannot be measured or compared is undecided, with the reason.
     """
-    judged = [_judge_one(expect, number, record, starts) for number, expect in enumerate(expectations)]
+    judged = [_judge_one(expect, number, record, starts, unfinished) for number, expect in enumerate(expectations)]
     return Verdict(tuple(judged), run, dict(versions or {}))
 
 
@@ -210,7 +214,9 @@ def word_for(difference: float, error: float, within: float) -> Word:
     return "fails" if abs(difference) - error > within else "undecided"
 
 
-def _judge_one(expect: ExpectSettings, number: int, record: Record, starts: Sequence[Any]) -> Judgement:
+def _judge_one(
+    expect: ExpectSettings, number: int, record: Record, starts: Sequence[Any], unfinished: str
+) -> Judgement:
     try:
         expected = expected_value(expect, record.basin, starts)
     except RequestError:
@@ -225,6 +231,8 @@ def _judge_one(expect: ExpectSettings, number: int, record: Record, starts: Sequ
     expected = expected._replace(unit=expected.unit or finding.unit)
     within = tolerance(expect.within, expected)
     word, reason = _decide(finding, expected, within)
+    if unfinished and getattr(expect.measure, "during", None) is None:
+        word, reason = "undecided", unfinished
     return Judgement(expect, expected, finding, within, word, reason, (ONE_GRID, *finding.remarks))
 
 

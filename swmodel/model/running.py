@@ -3,22 +3,18 @@
 from __future__ import annotations
 
 import logging
-import signal
 import sys
 import time as clock
-from collections.abc import Callable, Iterator, Sequence
-from contextlib import contextmanager
-from dataclasses import dataclass, replace
+from collections.abc import Sequence
 from pathlib import Path
-from types import FrameType
 from typing import TYPE_CHECKING, Any
 
-from ..errors import RequestError, SolutionError, StopRequested
+from ..errors import Fault, RequestError
 from ..measures import ExpectSettings, Record, Verdict, faults
 from ..measures import judge as judge_record
 from ..outlook import Outlook, check
 from ..outlook.cost import remember_run
-from ..outlook.plan import Begun, Plan, make_basin, make_plan, run_folder_name
+from ..outlook.plan import Begun, as_parts, make_basin, make_plan, run_folder_name
 from ..outlook.speeds import measure_speed
 from ..quantities import TIME, format_quantity, read_quantity
 from ..settings import Experiment
@@ -28,38 +24,16 @@ from ..store.lock import FolderLock
 from ..store.provenance import digest, gather_provenance, package_versions
 from ..store.reading import VERDICT, Run
 from ..store.writer import RunWriter, free_folder
+from .course import Course, Report, set_up_digest
 from .model import Model
 
 if TYPE_CHECKING:
     from ..dynamics import PVFlux
 
 RUNS = Path("runs")
-STOPPING = (signal.SIGINT, signal.SIGTERM)
+TIME_ROUND_OFF = 1e-6  # s: times are kept to a microsecond
 
 log = logging.getLogger(__name__)
-
-
-@dataclass(frozen=True)
-class Progress:
-    """How far a run has come.
-
-    Parameters
-    ----------
-    time, until : float
-        Model time now and at the end, s.
-    steps : int
-        Steps taken by this process.
-    energy_drift : float
-        (energy - energy at the start)/energy at the start.
-    """
-
-    time: float
-    until: float
-    steps: int
-    energy_drift: float
-
-
-Report = Callable[[Progress], None]
 
 
 def run(
@@ -104,7 +78,7 @@ def run(
     StopRequested
         Where a signal asked it to stop; a checkpoint was written.
     """
-    outlook = outlook or check(experiment, start=start, pv_flux=pv_flux)
+    outlook = outlook or check(experiment, start=start, pv_flux=pv_flux, into=into)
     if outlook.refusals or outlook.plan is None:
         raise experiment.placed(RequestError(outlook.refusals))
     plan = outlook.plan
@@ -118,13 +92,13 @@ def run(
         for caution in outlook.cautions:
             log.info("caution: %s", caution)
         _log_beginning(model)
-        _Course(model, plan, writer, progress).follow()
+        Course(model, plan, writer, progress).follow()
         seconds = clock.monotonic() - begun
         log.info("ended after %.3g s of wall clock", seconds)
     if outlook.cost is not None:
         measure_speed(model.equations, experiment.time)
         remember_run(outlook.cost, seconds, float(plan.basin.grid.nx * plan.basin.grid.ny * plan.steps))
-    judge(folder)
+    judge(folder, start=start)
     return Run(folder)
 
 
@@ -161,7 +135,18 @@ def resume(
     begun = Begun(float(kept.extra["step"]), int(kept.extra["snapshots_every"]), int(kept.extra["diagnostics_every"]))
     if until is not None:
         experiment = _extended(experiment, begun.step, until)
+        if experiment.time.until < float(kept.time) - TIME_ROUND_OFF:
+            raise RequestError(f"--until: the run has reached {format_quantity(float(kept.time), 's')} already")
     plan = make_plan(experiment, start=start, pv_flux=pv_flux, begun=begun)
+    if int(kept.extra["set_up"]) != set_up_digest(plan):
+        raise RequestError(
+            Fault(
+                (),
+                "the depth, f or the PV flux is not what the run began with",
+                "the same files, and the same objects of your own",
+                "give them again, or start a new run",
+            )
+        )
     provenance = gather_provenance(held.config_text, experiment.as_json(), sys.argv)
     with RunWriter(
         Path(folder),
@@ -176,12 +161,12 @@ def resume(
         model.restore(writer.checkpoint)
         log.info("goes on from %s", format_quantity(model.time, "s"))
         _log_beginning(model)
-        _Course(model, plan, writer, progress).follow()
-    judge(Path(folder))
+        Course(model, plan, writer, progress).follow()
+    judge(Path(folder), start=start)
     return Run(folder)
 
 
-def judge(run: Run | str | Path, expectations: Sequence[ExpectSettings] | None = None) -> Verdict:
+def judge(run: Run | str | Path, expectations: Sequence[ExpectSettings] | None = None, *, start: Any = None) -> Verdict:
     """Judge what a run left, and write verdict.json.
 
     Parameters
@@ -190,6 +175,8 @@ def judge(run: Run | str | Path, expectations: Sequence[ExpectSettings] | None =
         The run or its folder.
     expectations : sequence, optional
         Other expectations than the run's own; verdict.json is then left alone.
+    start : object or sequence, optional
+        Start states of your own that the run began with.
 
     Returns
     -------
@@ -204,16 +191,20 @@ def judge(run: Run | str | Path, expectations: Sequence[ExpectSettings] | None =
     held = run if isinstance(run, Run) else Run(run)
     experiment = Experiment.from_json(held.settings)
     record = Record.from_run(held, make_basin(experiment), experiment.numerics.linear)
+    starts = experiment.start if start is None else as_parts(start)
     if expectations is not None:
-        wrong = [fault for n, one in enumerate(expectations) for fault in faults(one, n, record, experiment.start)]
+        wrong = [fault for n, one in enumerate(expectations) for fault in faults(one, n, record, starts)]
         if wrong:
             raise RequestError(wrong)
+    reached, until = float(record.times[-1]), experiment.time.until
+    ended = f"the run ended at {format_quantity(reached, 's')} of {format_quantity(until, 's')}"
     verdict = judge_record(
         experiment.expect if expectations is None else expectations,
         record,
-        experiment.start,
+        starts,
         run=held.folder.name,
         versions=package_versions(),
+        unfinished=ended if until - reached > TIME_ROUND_OFF else "",
     )
     if expectations is None:
         write_json(held.folder / VERDICT, verdict.as_json())
@@ -243,142 +234,3 @@ def _extended(experiment: Experiment, dt: float, until: str | float) -> Experime
             f"the nearest is {max(1, round(end / dt)) * dt:.10g} s"
         )
     return experiment.with_values({"time.until": end})
-
-
-class _Course:
-    """One run from where its model stands to the end: what is stored when, and how it ends."""
-
-    def __init__(self, model: Model, plan: Plan, writer: RunWriter, report: Report | None) -> None:
-        self.model = model
-        self.plan = plan
-        self.writer = writer
-        self.report = report
-        self.signal = 0
-        self.first_energy: float | None = None
-        if writer.checkpoint is not None:
-            self.first_energy = float(writer.checkpoint.extra["first_energy"])
-        self._energy = self.first_energy or 0.0
-        self._pace = 0.0  # seconds a step, once measured
-        self.first_step = model.steps
-        self.checked = clock.monotonic()
-
-    def follow(self) -> None:
-        """Advance to the end, storing on the way."""
-        model, plan = self.model, self.plan
-        with self._signals():
-            if model.steps == 0:
-                self._store(snapshot=True, diagnostics=True)
-            while (ticks := self._ticks()) < plan.steps:
-                self._advance_to(self._next(ticks))
-                ticks = self._ticks()
-                end = ticks == plan.steps
-                self._store(
-                    snapshot=end or ticks % plan.output.steps_between_snapshots == 0,
-                    diagnostics=end or ticks % plan.output.steps_between_diagnostics == 0,
-                )
-                if self.signal and not end:
-                    self._stop()
-            self._checkpoint()
-            self.writer.finish()
-
-    def _ticks(self) -> int:
-        """Model time in steps of the plan; the model's own may have been halved."""
-        return round(self.model.time / self.plan.step.dt)
-
-    def _next(self, ticks: int) -> int:
-        """Next time, in steps of the plan, at which something is stored."""
-        output = self.plan.output
-        coming = (
-            (ticks // every + 1) * every for every in (output.steps_between_snapshots, output.steps_between_diagnostics)
-        )
-        return min(*coming, self.plan.steps)
-
-    def _advance_to(self, ticks: int) -> None:
-        """Advance to a time given in steps of the plan, in pieces short enough to heed a signal."""
-        model = self.model
-        steps = round((ticks * self.plan.step.dt - model.time) / model.dt)
-        while steps > 0:
-            piece = min(steps, self._piece())
-            begun = clock.monotonic()
-            try:
-                model.take(piece)
-            except SolutionError as error:
-                self._checkpoint()
-                kept = self.writer.folder / "checkpoints"
-                hint = f"the last good state, at {format_quantity(model.time, 's')}, is in {kept}"
-                raise SolutionError(f"{error}; {hint}", error.time, error.place) from error
-            self._pace = (clock.monotonic() - begun) / piece
-            steps -= piece
-            if not steps:
-                return  # what is due at this time is stored before a signal is heeded
-            if self.signal:
-                self._stop()
-            if self.report:
-                self._tell()
-
-    def _piece(self) -> int:
-        """Steps that take some half second."""
-        return max(1, int(0.5 / self._pace)) if self._pace else 10
-
-    def _store(self, *, snapshot: bool, diagnostics: bool) -> None:
-        model = self.model
-        if diagnostics:
-            values = model.diagnostics()
-            energy = values["energy_kinetic"] + values["energy_potential"]
-            if self.first_energy is None:
-                self.first_energy = energy
-            self._energy = energy
-            self.writer.write_diagnostics(model.time, values, {"energy_budget": model.energy_budget()})
-        if snapshot:
-            self.writer.write_snapshot(model.time, {name: model.field(name) for name in self.plan.output.fields})
-        if diagnostics:
-            halved = self._ticks() < self.plan.steps and model.halve_step_if_outgrown()
-            if halved or clock.monotonic() - self.checked > self.plan.output.checkpoint_every:
-                self._checkpoint()
-                self.checked = clock.monotonic()
-            if self.report:
-                self._tell()
-
-    def _checkpoint(self) -> None:
-        output = self.plan.output
-        held = self.model.checkpoint()
-        begun = {
-            "step": self.plan.step.dt,
-            "snapshots_every": output.steps_between_snapshots,
-            "diagnostics_every": output.steps_between_diagnostics,
-            "first_energy": self.first_energy,
-        }
-        self.writer.write_checkpoint(replace(held, extra={**held.extra, **begun}))
-
-    def _tell(self) -> None:
-        assert self.report is not None
-        drift = (self._energy - self.first_energy) / self.first_energy if self.first_energy else 0.0
-        self.report(
-            Progress(self.model.time, self.plan.experiment.time.until, self.model.steps - self.first_step, drift)
-        )
-
-    def _stop(self) -> None:
-        self._checkpoint()
-        name = signal.Signals(self.signal).name
-        raise StopRequested(
-            f"stopped by {name} at {format_quantity(self.model.time, 's')}; a checkpoint was written; "
-            f"go on with: swmodel resume {self.writer.folder}",
-            self.signal,
-        )
-
-    @contextmanager
-    def _signals(self) -> Iterator[None]:
-        """Note signals that ask to stop; they are heeded between pieces. Only the main thread can listen."""
-
-        def note(number: int, frame: FrameType | None) -> None:
-            self.signal = number
-
-        try:
-            before = {number: signal.signal(number, note) for number in STOPPING}
-        except ValueError:
-            before = {}
-        try:
-            yield
-        finally:
-            for number, handler in before.items():
-                signal.signal(number, handler)

@@ -79,6 +79,11 @@ class Begun:
     diagnostics_every: int
 
 
+def as_parts(start: Any) -> Sequence[Any]:
+    """Return the parts of a start of one's own: itself, where it is one."""
+    return start if isinstance(start, list | tuple) else [start]
+
+
 def make_basin(experiment: Experiment) -> Basin:
     """Build grid, frame and layer of an experiment."""
     grid = build_grid(experiment.grid, experiment.edges)
@@ -130,7 +135,7 @@ class Draft:
 
 def begin_draft(experiment: Experiment, *, start: Any = None, pv_flux: PVFlux | None = None) -> Draft:
     """Name what is to be planned; nothing is computed yet. Arguments as for `make_plan`."""
-    parts: Sequence[Any] = experiment.start if start is None else start if isinstance(start, list | tuple) else [start]
+    parts: Sequence[Any] = experiment.start if start is None else as_parts(start)
     return Draft(experiment, parts, pv_flux or PV_FLUXES[experiment.numerics.pv_flux])
 
 

@@ -131,6 +131,8 @@ def read_document(path: Path) -> Document:
         raise RequestError(Fault((), found, "", next(hints, ""), str(path), error.lineno)) from None
     except RecursionError:
         raise RequestError(Fault((), "lists or tables are nested too deep", file=str(path))) from None
+    except ValueError as error:  # a whole number with thousands of digits
+        raise RequestError(Fault((), f"this cannot be read: {error}", file=str(path))) from None
     return Document(absolute_paths(values, path.absolute().parent), text, path, Places(text))
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import sys
 from collections.abc import Iterator
 from typing import Annotated, ClassVar, Literal
@@ -20,7 +21,8 @@ from .base import During, Measure, SeriesName
 Array = NDArray[np.float64]
 
 ROUND_OFF = 4 * sys.float_info.epsilon
-"""Relative error of the difference of two sums, each rounded by up to two units in its last place."""
+"""Relative error of the difference of two sums of one row each; it grows as the root of the cells in a row, which are
+added one after the other (Higham 2002, Accuracy and Stability of Numerical Algorithms, section 4.2)."""
 
 ENERGY = ("energy_kinetic", "energy_potential")
 
@@ -54,7 +56,7 @@ class Change(Measure):
         if not self.absolute and first == 0:
             raise NoAnswerError(f"{self.of} is 0 at first, and nothing can be relative to it; set absolute = true")
         scale = 1.0 if self.absolute else abs(first)
-        error = ROUND_OFF * max(abs(first), abs(last)) / scale
+        error = ROUND_OFF * math.sqrt(record.basin.grid.nx) * max(abs(first), abs(last)) / scale
         times = record.series_times[numbers]
         evidence = Evidence(
             "time",
