@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import pytest
 from hypothesis import settings
+from stepped import STEP
 
 from swmodel.outlook import speeds
 
@@ -22,3 +23,11 @@ def speeds_of_their_own():
     before, speeds.FILE = speeds.FILE, "speed-of-tests.json"
     yield
     speeds.FILE = before
+
+
+@pytest.fixture
+def step(tmp_path):
+    """A configuration on disk."""
+    path = tmp_path / "step.toml"
+    path.write_text(STEP)
+    return path
