@@ -129,6 +129,15 @@ def test_check_refuses_a_set_up_that_cannot_answer(step, capsys):
     assert capsys.readouterr().out.splitlines()[-1].startswith("1 refusal")
 
 
+def test_check_knows_that_rotation_drives_a_front_against_walls_along_it(step, capsys):
+    # Gill 1982, chapter 7: the adjusted flow runs along the front; between walls across it must turn round
+    assert main(["check", str(step)]) == 0
+    assert "nothing varies along it" in " ".join(capsys.readouterr().out.split())
+    step.write_text(STEP.replace('"periodic"', '"wall"'))
+    assert main(["check", str(step)]) == 0
+    assert "nothing varies along it" not in " ".join(capsys.readouterr().out.split())
+
+
 def test_machines_get_json(step, tmp_path, capsys):
     assert main(["check", str(step), "--json"]) == 0
     assert json.loads(capsys.readouterr().out)["refusals"] == []

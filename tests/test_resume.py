@@ -93,6 +93,15 @@ def test_resume_refuses_another_pv_flux(step, tmp_path):
         resume(tmp_path / "run", "2 day", pv_flux=PV_FLUXES["energy"])
 
 
+def test_resume_refuses_a_checkpoint_that_another_version_wrote(step, tmp_path, monkeypatch, capsys):
+    from swmodel.model import running
+
+    assert main(["run", str(step), "--into", str(tmp_path / "run"), "--set", "time.until=1 day"]) == 0
+    monkeypatch.setattr(running, "KEPT_IN_CHECKPOINTS", ("step", "of_the_future"))
+    assert main(["resume", str(tmp_path / "run"), "--until", "2 day"]) == 2
+    assert "holds no of_the_future: another version of swmodel wrote it" in capsys.readouterr().err
+
+
 def test_resume_from_the_very_start_equals_the_uninterrupted_run(step, tmp_path):
     from swmodel.model import Model, resume
     from swmodel.model.course import Course

@@ -31,6 +31,7 @@ if TYPE_CHECKING:
     from ..dynamics import PVFlux
 
 RUNS = Path("runs")
+KEPT_IN_CHECKPOINTS = ("step", "snapshots_every", "diagnostics_every", "first_energy", "set_up")
 TIME_ROUND_OFF = 1e-6  # s: times are kept to a microsecond
 
 log = logging.getLogger(__name__)
@@ -88,6 +89,7 @@ def run(
         folder, plan.basin, provenance=provenance, output=plan.output, epoch=experiment.time.start
     ) as writer:
         begun = clock.monotonic()
+        log.info("command: %s", provenance.command)
         model = Model(experiment, plan=plan)
         for caution in outlook.cautions:
             log.info("caution: %s", caution)
@@ -132,6 +134,9 @@ def resume(
     FolderLock(held.folder).release()  # a run that still goes on is told first, with its holder
     experiment = Experiment.from_json(held.settings)
     kept = read_checkpoint(Path(folder), digest(experiment.as_json()))
+    if lacking := [name for name in KEPT_IN_CHECKPOINTS if name not in kept.extra]:
+        found = f"its checkpoint holds no {', '.join(lacking)}: another version of swmodel wrote it"
+        raise RequestError(Fault((), found, "", "resume it with that version, or run it again"))
     begun = Begun(float(kept.extra["step"]), int(kept.extra["snapshots_every"]), int(kept.extra["diagnostics_every"]))
     if until is not None:
         experiment = _extended(experiment, begun.step, until)

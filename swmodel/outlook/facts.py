@@ -154,7 +154,7 @@ class Facts:
 
     @cached_property
     def varying(self) -> tuple[Direction, ...]:
-        """Directions in which the start, the depth or f vary."""
+        """Directions in which start, depth or f vary, or the flow soon will: Coriolis drives it against walls."""
         return tuple(direction for direction in DIRECTIONS if self._varies(direction))
 
     def _varies(self, direction: Direction) -> bool:
@@ -167,7 +167,10 @@ class Facts:
             slope = self.basin.wave_speed / self.basin.reference_depth
             speed = max(self.speed, slope * self.elevation)
             fields += [(self.start.u, speed), (self.start.v, speed), (self.start.eta, speed / slope)]
-        return any(float(np.ptp(field, axis=axis).max()) > UNIFORM * size for field, size in fields)
+        if any(float(np.ptp(field, axis=axis).max()) > UNIFORM * size for field, size in fields):
+            return True
+        moves = any(float(np.ptp(field)) > UNIFORM * size for field, size in fields[2:])
+        return moves and bool(self.basin.f.any()) and not self.periodic(direction)
 
     @cached_property
     def imbalance(self) -> dict[Direction, NDArray[np.float64]]:
