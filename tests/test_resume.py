@@ -36,9 +36,19 @@ def test_resume_after_a_stop_equals_the_uninterrupted_run_bit_for_bit(step, tmp_
     assert_same_runs(stopped, whole)
 
 
-def test_resume_after_a_kill_equals_the_uninterrupted_run_bit_for_bit(step, tmp_path):
+@pytest.mark.parametrize("stepper", ["ssprk3", "rk4", "leapfrog"])
+def test_resume_after_a_kill_equals_the_uninterrupted_run_bit_for_bit(step, tmp_path, stepper):
     # a checkpoint at every diagnostics time, then SIGKILL: nothing is said, nothing is tidied
-    sets = ["--set", "time.until=20 day", "--set", "output.every=4 h", "--set", "output.checkpoint_every=1e-6"]
+    sets = [
+        "--set",
+        f"time.stepper={stepper}",
+        "--set",
+        "time.until=20 day",
+        "--set",
+        "output.every=4 h",
+        "--set",
+        "output.checkpoint_every=1e-6",
+    ]
     killed, whole = tmp_path / "killed", tmp_path / "whole"
     command = [
         sys.executable, "-c", "import sys; from swmodel.cli import main; sys.exit(main())",
